@@ -1,0 +1,1 @@
+"""Bundled invented sites, profiles and weather; installed as ``slab.scenarios``."""

@@ -1,0 +1,1 @@
+"""What is computed from the forcing: the day's mixed layer, the night's inversion, and the answers."""
