@@ -1,0 +1,264 @@
+"""The scenario file (TOML) or a few first-use flags made into typed, checked objects.
+
+Everything the user did not give is filled in here and listed as an assumption with a plausible step in it.
+"""
+
+from __future__ import annotations
+
+import tomllib
+from collections.abc import Mapping
+from dataclasses import replace
+from datetime import datetime
+from pathlib import Path
+from typing import Any
+
+from forcing.assumptions import list_assumptions
+from forcing.errors import ScenarioError
+from forcing.scenario_parts import (
+    Parts,
+    read_cover,
+    read_fluxes_of,
+    read_limits,
+    read_profiles,
+    read_run,
+    read_weather_of,
+)
+from forcing.scenario_types import (
+    ENTRAINMENTS,
+    REBASE_RULES,
+    Assumption,
+    Limits,
+    RunOptions,
+    Scenario,
+    Settings,
+    Site,
+    VentilationClass,
+)
+from forcing.section import Section, check_layout
+from forcing.series import read_text
+
+__all__ = [
+    "ENTRAINMENTS",
+    "REBASE_RULES",
+    "Assumption",
+    "Limits",
+    "RunOptions",
+    "Scenario",
+    "Settings",
+    "Site",
+    "VentilationClass",
+    "build",
+    "from_flags",
+    "load",
+    "with_run",
+    "with_setting",
+    "with_step",
+]
+
+
+def load(path: str | Path) -> Scenario:
+    """Read a scenario file.
+
+    Raises
+    ------
+    DaylayerError
+        A subclass that names the file, the section and the key (or the line of a table), the value and a remedy.
+    """
+    file = Path(path)
+    text = read_text(file, error=ScenarioError)
+    try:
+        settings = tomllib.loads(text)
+    except tomllib.TOMLDecodeError as problem:
+        raise ScenarioError(
+            f"is not valid TOML: {problem}", place=str(file), remedy="texts need quotes, sections need [brackets]"
+        ) from None
+    return build(settings, folder=file.parent, source=str(file), text=text)
+
+
+def build(settings: Settings, *, folder: Path, source: str, text: str = "", parts: Parts | None = None) -> Scenario:
+    """Make a scenario of plain values.
+
+    Parameters
+    ----------
+    settings : mapping
+        ``title`` and one mapping per section.
+    folder : Path
+        Where file names are taken from.
+    source : str
+        What messages call the place.
+    parts : Parts or None
+        Tables that were read before, so that a changed scenario need not read them again.
+    """
+    sections = check_layout(settings, source)
+    title = str(settings.get("title") or "the site")
+    profiles = read_profiles(sections, folder, title, parts)
+    run = read_run(sections["run"])
+    cover, soil_moisture = read_cover(sections["surface"])
+    fluxes = read_fluxes_of(sections["surface"], folder, parts)
+    weather = read_weather_of(sections["weather"], folder, parts, wind_known=profiles.morning.wind_known)
+    scenario = Scenario(
+        title=title,
+        site=profiles.site,
+        profile=profiles.morning,
+        later=profiles.later,
+        cover=cover,
+        soil_moisture=soil_moisture,
+        fluxes=fluxes,
+        weather=weather,
+        run=run,
+        limits=read_limits(sections["limits"]),
+        assumptions=(),
+        source=source,
+        text=text,
+        original=profiles.original,
+        later_original=profiles.later_original,
+        rebase=profiles.rebase,
+        settings=_absolute(settings, sections, folder),
+    )
+    _check_span(scenario)
+    return replace(scenario, assumptions=list_assumptions(scenario))
+
+
+def _absolute(settings: Settings, sections: Mapping[str, Section], folder: Path) -> Settings:
+    out: dict[str, object] = {"title": settings["title"]} if settings.get("title") else {}
+    for name, section in sections.items():
+        values = dict(section.values)
+        for key in ("file", "later", "fluxes"):
+            value = values.get(key)
+            if isinstance(value, str):
+                values[key] = str((folder / Path(value.strip()).expanduser()).resolve())
+        if values:
+            out[name] = values
+    return out
+
+
+def _check_span(scenario: Scenario) -> None:
+    scenario.weather.covers(scenario.start, scenario.end)
+    if scenario.fluxes is not None:
+        scenario.fluxes.covers(scenario.start, scenario.end)
+
+
+def with_run(scenario: Scenario, **changes: Any) -> Scenario:
+    """Scenario with other run options (fields of `RunOptions`); tables must cover the longer run."""
+    settings = dict(scenario.settings)
+    for key, value in changes.items():
+        settings = with_value(settings, "run", key, value)
+    return _rebuilt(scenario, settings)
+
+
+def with_setting(scenario: Scenario, key: str, value: object) -> Scenario:
+    """Scenario with one dotted key (``surface.soil_moisture``) at another value; None removes it."""
+    section, _, name = key.partition(".")
+    return _rebuilt(scenario, with_value(scenario.settings, section, name, value))
+
+
+def with_step(scenario: Scenario, assumption: Assumption) -> Scenario:
+    """Scenario with the plausible step of one of its assumptions taken.
+
+    Raises
+    ------
+    ScenarioError
+        If the assumption has no step.
+    """
+    if assumption.stepped is None:
+        raise ScenarioError(f"no step is known for '{assumption.name}'", remedy="take an assumption with a step")
+    return with_setting(scenario, assumption.key, assumption.stepped)
+
+
+def with_value(settings: Settings, section: str, key: str, value: object) -> dict[str, object]:
+    """Copy of plain settings with one value changed; None removes it."""
+    old = settings.get(section)
+    values = dict(old) if isinstance(old, Mapping) else {}
+    if value is None:
+        values.pop(key, None)
+    else:
+        values[key] = value
+    return {**settings, section: values}
+
+
+def _rebuilt(scenario: Scenario, settings: Settings) -> Scenario:
+    parts = Parts.of(scenario)
+    return build(settings, folder=Path(), source=scenario.source, text=scenario.text, parts=parts)
+
+
+def from_flags(
+    *,
+    profile: str | Path,
+    latitude: float | None = None,
+    longitude: float | None = None,
+    elevation: float | None = None,
+    zone: str | None = None,
+    cover: str | None = None,
+    soil_moisture: float | None = None,
+    cloud: float | None = None,
+    wind: float | None = None,
+    wind_from: float | None = None,
+    hours: float | None = None,
+    valid: str | datetime | None = None,
+    rebase: str | None = None,
+    title: str | None = None,
+) -> Scenario:
+    """Make a scenario of one profile file and a few values; what the file already says need not be given.
+
+    Parameters
+    ----------
+    latitude, longitude, elevation : float
+        Degrees north, degrees east, m above sea level of the site; the release site's where not given.
+    zone : str
+        IANA zone name of the site.
+    cloud : float
+        Cloud fraction, 0 to 1.
+    wind, wind_from : float
+        Wind that the pressure gradient keeps up [m/s] and the direction it blows from [degrees].
+    valid : str or datetime
+        Time of the profile, ISO 8601 with offset.
+
+    Raises
+    ------
+    ScenarioError
+        If something is missing; it lists precisely the flags that are needed.
+    """
+    from forcing.readers import read_sounding
+
+    source = "flags"
+    sections: dict[str, dict[str, object]] = {
+        "profile": {"file": str(profile), "valid": valid, "rebase": rebase},
+        "surface": {"cover": cover, "soil_moisture": soil_moisture},
+        "weather": {
+            "cloud_fraction": cloud,
+            "pressure_gradient_wind_m_s": wind,
+            "pressure_gradient_wind_from_deg": wind_from,
+        },
+        "run": {"hours": hours},
+    }
+    settings: dict[str, object] = {
+        name: {key: value for key, value in values.items() if value is not None} for name, values in sections.items()
+    }
+    when = check_layout({**settings, "site": {}}, source)["profile"].time("valid")
+    sounding = read_sounding(Path(profile), valid=when)
+    lacking = [
+        text
+        for text, flag, told in (
+            ("--latitude (degrees north)", latitude, sounding.latitude),
+            ("--longitude (degrees east)", longitude, sounding.longitude),
+            ("--elevation (m above sea level)", elevation, sounding.elevation),
+            ("--zone (IANA name such as Etc/GMT+6)", zone, None),
+            ("--valid (time of the profile, such as 2026-07-01T12:00Z)", when, sounding.valid),
+        )
+        if flag is None and told is None
+    ]
+    if lacking:
+        raise ScenarioError(
+            "the file does not say everything the forecast needs",
+            place=str(profile),
+            remedy="add " + ", ".join(lacking),
+        )
+    settings["site"] = {
+        "name": sounding.station or Path(profile).stem,
+        "latitude": sounding.latitude if latitude is None else latitude,
+        "longitude": sounding.longitude if longitude is None else longitude,
+        "elevation": sounding.elevation if elevation is None else elevation,
+        "time_zone": zone,
+    }
+    settings["title"] = title or f"From {Path(profile).name}"
+    return build(settings, folder=Path(), source=source)
