@@ -19,8 +19,8 @@ from forcing.air import (
 )
 from forcing.levels import Levels, repair
 from forcing.sounding import Array, Flag, Repair
+from forcing.units import FOOT_M
 
-FOOT = 0.3048  # m, exact (international foot)
 NEAR_GROUND = 5000.0  # m above the first level: heights here settle the elevation
 ELEVATION_DOUBT = 50.0  # m, common practice: station and barometer heights differ by less
 PRESSURE_DOUBT = 450.0  # m, about 50 hPa: a deep low at sea level is not a doubt
@@ -87,7 +87,7 @@ def _unit(given: Array, above: Array) -> tuple[Array, tuple[Repair, ...]]:
         return given, ()
     ratio = float(np.median(np.diff(given[known]) / np.diff(above[known])))
     if 3.0 < ratio < 3.6:
-        return given * FOOT, repair("height unit", int(known.size), "heights named m were feet: read as feet")
+        return given * FOOT_M, repair("height unit", int(known.size), "heights named m were feet: read as feet")
     if 0.0008 < ratio < 0.0012:
         return given * 1000.0, repair("height unit", int(known.size), "heights named m were km: read as km")
     return given, ()

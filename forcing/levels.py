@@ -160,10 +160,8 @@ def fill_pressure(levels: Levels) -> tuple[Levels, tuple[Repair, ...]]:
     p, z = levels.pressure, levels.height
     known = np.isfinite(p) & np.isfinite(z)
     lost = ~np.isfinite(p)
-    if known.sum() < 2:
-        fillable = np.zeros_like(lost)
-    else:
-        fillable = lost & (z >= z[known].min()) & (z <= z[known].max())
+    low, high = (z[known].min(), z[known].max()) if known.sum() >= 2 else (np.inf, -np.inf)
+    fillable = lost & (z >= low) & (z <= high)
     if fillable.any():
         order = np.argsort(z[known], kind="stable")
         p = p.copy()
