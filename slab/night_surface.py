@@ -16,10 +16,12 @@ from forcing.air import (
     GRAVITY,
     KARMAN,
     R_DRY,
+    R_VAPOUR,
     STEFAN_BOLTZMANN,
+    ZERO_CELSIUS,
     latent_heat,
-    saturation_slope,
     saturation_vapour_pressure,
+    saturation_vapour_pressure_ice,
 )
 
 from forcing.speed import kernel
@@ -32,6 +34,9 @@ BOUNDARIES = {"energy": ENERGY, "temperature": TEMPERATURE, "flux": FLUX}
 
 LEAST_WIND = 0.1  # [m s-1] added in quadrature to the lowest wind, so that calm air keeps a defined transfer
 COLDEST, HOTTEST = 180.0, 360.0  # [K] range over which saturation is evaluated; only failing trial steps leave it
+MELT_CONDUCTANCE = 500.0  # [W m-2 K-1] spent on melting per kelvin a snow skin is over the melting point: holds it there
+SUBLIMATION = 2.834e6  # [J kg-1] as in forcing.transfer
+VAPORISATION = 2.5e6  # [J kg-1] only in the slope of saturation, as in forcing.transfer
 FLUX_RELAXATION = 1.0  # [W m-2 K-1] ties the skin to the air where fluxes are prescribed: no runaway beyond the possible flux
 
 
@@ -49,6 +54,7 @@ class Footing(NamedTuple):
     soil_conductivity, soil_capacity : W m-1 K-1 and J m-3 K-1.
     pressure, exner : at the ground, Pa and 1.
     density : of the lowest air, kg m-3.
+    snow : 1 for a snow skin: saturation over ice, melt at the melting point.
     """
 
     height: float
@@ -63,6 +69,7 @@ class Footing(NamedTuple):
     pressure: float
     exner: float
     density: float
+    snow: float
 
 
 class Drive(NamedTuple):
@@ -86,8 +93,8 @@ class Link(NamedTuple):
 
     ``heat`` [K kg m-2 s-1] of potential temperature, ``vapour`` [kg m-2 s-1], ``drag`` [kg m-2 s-1]: stress = -drag x
     wind. Suffix: derivative with respect to skin temperature (s), and theta (t), u, v, humidity (q) of the lowest cell.
-    ``source`` [W m-2] is what the skin gains by all terms; ``source_s`` its own derivative without heat and vapour.
-    ``net_radiation``, ``ground`` [W m-2], ``lost`` [W m-2 K-1] long-wave emission's derivative; ``latent_heat`` [J/kg].
+    ``net_radiation`` (positive downward, less what melts snow), ``ground`` [W m-2], ``lost`` [W m-2 K-1] the first one's derivative,
+    negated; ``latent_heat`` [J/kg].
     """
 
     heat: float
@@ -132,11 +139,23 @@ def _transfer(
 
 
 @kernel
+def saturation(foot: Footing, skin: float) -> tuple[float, float]:
+    """Saturation humidity at the skin [kg/kg] and its slope [K-1], as in forcing.transfer."""
+    if foot.snow > 0.0 and skin < ZERO_CELSIUS:
+        vapour = saturation_vapour_pressure_ice(skin)
+        heat = SUBLIMATION
+    else:
+        vapour = saturation_vapour_pressure(skin)
+        heat = VAPORISATION
+    rest = foot.pressure - (1.0 - EPSILON) * vapour
+    saturated = EPSILON * vapour / rest
+    return saturated, saturated * foot.pressure / rest * heat / (R_VAPOUR * skin * skin)
+
+
+@kernel
 def _vapour(foot: Footing, drive: Drive, skin: float, humidity: float, x: float) -> tuple[float, float, float, float]:
     """Vapour flux [kg m-2 s-1], and its derivatives by skin temperature, X and humidity of the air."""
-    bounded = min(max(skin, COLDEST), HOTTEST)
-    saturated = EPSILON * saturation_vapour_pressure(bounded) / foot.pressure
-    slope = EPSILON * saturation_slope(bounded) / foot.pressure
+    saturated, slope = saturation(foot, min(max(skin, COLDEST), HOTTEST))
     conductance = foot.heat * x
     lack = saturated - humidity
     share = 1.0 / (1.0 + drive.surface_resistance * conductance) if lack > 0.0 else 1.0
@@ -160,6 +179,10 @@ def link(
     heat = foot.density * foot.heat
     emitted = foot.emissivity * STEFAN_BOLTZMANN * skin * skin * skin
     net = drive.absorbed + foot.emissivity * drive.longwave_down - emitted * skin
+    lost = 4.0 * emitted
+    if foot.snow > 0.0 and skin > ZERO_CELSIUS:
+        net -= MELT_CONDUCTANCE * (skin - ZERO_CELSIUS)
+        lost += MELT_CONDUCTANCE
     ground = foot.skin_conductance * (skin - soil)
     lv = latent_heat(min(max(skin, COLDEST), HOTTEST))
     if boundary == FLUX:
@@ -189,7 +212,7 @@ def link(
         drag * x_v,
         net,
         ground,
-        4.0 * emitted,
+        lost,
         lv,
     )  # fmt: skip
 
@@ -197,7 +220,7 @@ def link(
 def footing(
     *, height: float, roughness_momentum: float, roughness_heat: float, emissivity: float, skin_capacity: float,
     skin_conductance: float, soil_conductivity: float, soil_capacity: float, pressure: float, exner: float,
-    temperature: float,
+    temperature: float, snow: float = 0.0,
 ) -> Footing:  # fmt: skip
     """Work out the constants of the lowest half cell; SI units, `skin_conductance` down to the first layer's middle."""
     log_m, log_h = neutral_logs(height, roughness_momentum, roughness_heat)
@@ -206,5 +229,5 @@ def footing(
     factor = 5.3 * heat * 10.0 * math.sqrt((height + roughness_momentum) / roughness_momentum)
     return Footing(
         height, (KARMAN / log_m) ** 2, heat, factor, emissivity, skin_capacity, skin_conductance, soil_conductivity,
-        soil_capacity, pressure, exner, pressure / (R_DRY * temperature),
+        soil_capacity, pressure, exner, pressure / (R_DRY * temperature), snow,
     )  # fmt: skip
