@@ -13,6 +13,7 @@ from pathlib import Path
 from typing import Any
 
 from forcing.assumptions import list_assumptions
+from forcing.bundled import bundled, bundled_names
 from forcing.errors import ScenarioError
 from forcing.scenario_parts import (
     Parts,
@@ -22,6 +23,7 @@ from forcing.scenario_parts import (
     read_profiles,
     read_run,
     read_weather_of,
+    release_elevation,
 )
 from forcing.scenario_types import (
     ENTRAINMENTS,
@@ -34,7 +36,8 @@ from forcing.scenario_types import (
     Site,
     VentilationClass,
 )
-from forcing.section import Section, check_layout
+from forcing.scenario_write import write_toml
+from forcing.section import FLAGS_SOURCE, Section, check_layout
 from forcing.series import read_text
 
 __all__ = [
@@ -48,11 +51,14 @@ __all__ = [
     "Site",
     "VentilationClass",
     "build",
+    "bundled",
+    "bundled_names",
     "from_flags",
     "load",
     "with_run",
     "with_setting",
     "with_step",
+    "write_toml",
 ]
 
 
@@ -220,7 +226,7 @@ def from_flags(
     """
     from forcing.readers import read_sounding
 
-    source = "flags"
+    source = FLAGS_SOURCE
     sections: dict[str, dict[str, object]] = {
         "profile": {"file": str(profile), "valid": valid, "rebase": rebase},
         "surface": {"cover": cover, "soil_moisture": soil_moisture},
@@ -236,12 +242,13 @@ def from_flags(
     }
     when = check_layout({**settings, "site": {}}, source)["profile"].time("valid")
     sounding = read_sounding(Path(profile), valid=when)
+    ground = release_elevation(sounding)
     lacking = [
         text
         for text, flag, told in (
             ("--latitude (degrees north)", latitude, sounding.latitude),
             ("--longitude (degrees east)", longitude, sounding.longitude),
-            ("--elevation (m above sea level)", elevation, sounding.elevation),
+            ("--elevation (m above sea level)", elevation, ground),
             ("--zone (IANA name such as Etc/GMT+6)", zone, None),
             ("--valid (time of the profile, such as 2026-07-01T12:00Z)", when, sounding.valid),
         )
@@ -257,7 +264,7 @@ def from_flags(
         "name": sounding.station or Path(profile).stem,
         "latitude": sounding.latitude if latitude is None else latitude,
         "longitude": sounding.longitude if longitude is None else longitude,
-        "elevation": sounding.elevation if elevation is None else elevation,
+        "elevation": ground if elevation is None else elevation,
         "time_zone": zone,
     }
     settings["title"] = title or f"From {Path(profile).name}"

@@ -169,8 +169,11 @@ def _prepared(sounding: Sounding, valid: datetime | None, site: Site, section: S
         latitude = site.latitude
     if longitude is None and sounding.longitude is None:
         longitude = site.longitude
-    if elevation is None and sounding.elevation is None and _on_site_ground(sounding, site.elevation):
-        elevation = site.elevation
+    released = release_elevation(sounding)
+    if elevation is None and sounding.elevation is None:
+        # without a stated elevation a release near the site's height was on the site's ground
+        near = released is None or abs(released - site.elevation) <= REBASE_FROM_M
+        elevation = site.elevation if near else None
     return prepare(
         sounding,
         valid=valid if sounding.valid is None else None,
@@ -180,10 +183,12 @@ def _prepared(sounding: Sounding, valid: datetime | None, site: Site, section: S
     )
 
 
-def _on_site_ground(sounding: Sounding, elevation: float) -> bool:
-    """Whether a release without a stated elevation can have been on the site's ground, judged by its lowest height."""
+def release_elevation(sounding: Sounding) -> float | None:
+    """Elevation [m above sea level] that the file says, else its lowest height above sea level; None without either."""
+    if sounding.elevation is not None:
+        return sounding.elevation
     heights = [float(height) for height in sounding.height_msl if math.isfinite(height)]
-    return sounding.heights_above_ground or not heights or abs(min(heights) - elevation) <= REBASE_FROM_M
+    return min(heights) if heights and not sounding.heights_above_ground else None
 
 
 def read_profiles(sections: Mapping[str, Section], folder: Path, title: str, parts: Parts | None) -> Profiles:
@@ -194,7 +199,7 @@ def read_profiles(sections: Mapping[str, Section], folder: Path, title: str, par
         site = read_site(sections["site"], (original.latitude, original.longitude, original.elevation), title)
     else:
         sounding, valid = _sounding(section, folder, "file", "valid")
-        site = read_site(sections["site"], (sounding.latitude, sounding.longitude, sounding.elevation), title)
+        site = read_site(sections["site"], (sounding.latitude, sounding.longitude, release_elevation(sounding)), title)
         original = _prepared(sounding, valid, site, section)
         later = None
         if "later" in section.values:

@@ -68,6 +68,7 @@ class Series:
             east = np.interp(posix, self.posix, np.sin(radians))
             north = np.interp(posix, self.posix, np.cos(radians))
             found = np.degrees(np.arctan2(east, north)) % 360.0
+            found = np.where(found >= 360.0, 0.0, found)  # the remainder of a tiny negative angle rounds to 360
         else:
             found = np.interp(posix, self.posix, self.values)
         if hold:

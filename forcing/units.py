@@ -162,7 +162,9 @@ def log_wind_factor(height: float, reference_height: float, roughness: float) ->
 
 
 def round_to(value: float, step: float) -> float:
-    """Nearest multiple of a step, halves upward."""
+    """Nearest multiple of a step, halves upward; NaN stays NaN."""
+    if not math.isfinite(value):
+        return value
     return math.floor(value / step + 0.5) * step
 
 
