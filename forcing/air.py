@@ -43,7 +43,7 @@ _T_SEA, _P_SEA, _LAPSE, _R_ICAO = 288.15, 101325.0, 0.0065, 287.05287
 _H_TROPOPAUSE = 11000.0
 _T_TROPOPAUSE = _T_SEA - _LAPSE * _H_TROPOPAUSE
 _POWER = GRAVITY / (_R_ICAO * _LAPSE)
-_P_TROPOPAUSE = _P_SEA * (_T_TROPOPAUSE / _T_SEA) ** _POWER
+_P_TROPOPAUSE: float = _P_SEA * (_T_TROPOPAUSE / _T_SEA) ** _POWER
 _SCALE = _R_ICAO * _T_TROPOPAUSE / GRAVITY
 
 
@@ -276,19 +276,19 @@ def _adiabatic_saturation(
 def wet_bulb(temperature: float, q: float, pressure: float) -> float:
     """Thermodynamic (adiabatic saturation) wet-bulb temperature [K].
 
-    ASHRAE Handbook Fundamentals 2017, chapter 1, Eqs. 33 (water) and 35 (ice). The bulb is iced wherever
-    ice at or below 0 C satisfies the equation, so that the value steps from just below 0 C to several tenths of a
-    kelvin above it (in that gap water would satisfy it too). Air that is saturated, or supersaturated over an iced
-    bulb, gives its own temperature. NaN where water would boil.
+    ASHRAE Handbook Fundamentals 2017, chapter 1, Eqs. 33 (water) and 35 (ice). The bulb is iced where
+    water would have to be below 0 C to satisfy the equation, so that the value steps from 0 C to several tenths of a
+    kelvin below it; a little above that step an iced bulb satisfies it too, and water is taken, as for a fresh drop.
+    Air that is saturated, or supersaturated over an iced bulb, gives its own temperature. NaN where water would boil.
     """
     if not saturation_vapour_pressure(temperature) < pressure:
         return math.nan
     celsius = temperature - ZERO_CELSIUS
     ratio = mixing_ratio_from_humidity(q)
     if celsius > 0.0:
-        e = saturation_vapour_pressure_ice(ZERO_CELSIUS)
-        surplus = 2830.0 * EPSILON * e / (pressure - e) - 1.006 * celsius - ratio * (2830.0 + 1.86 * celsius)
-        if surplus <= 0.0:  # an iced bulb would be above 0 C
+        e = saturation_vapour_pressure(ZERO_CELSIUS)
+        surplus = 2501.0 * EPSILON * e / (pressure - e) - 1.006 * celsius - ratio * (2501.0 + 1.86 * celsius)
+        if surplus <= 0.0:  # a bulb wet with water is at or above 0 C
             wet = _adiabatic_saturation(celsius, celsius, ratio, pressure, 2501.0, 2.326, 4.186, False)
         else:
             wet = _adiabatic_saturation(0.0, celsius, ratio, pressure, 2830.0, 0.24, 2.1, True)
