@@ -36,6 +36,19 @@ class LazyGroup(click.Group):
         assert isinstance(command, click.Command)
         return command
 
+    def resolve_command(
+        self, ctx: click.Context, args: list[str]
+    ) -> tuple[str | None, click.Command | None, list[str]]:
+        """Find the subcommand; an unknown name is answered with the nearest one."""
+        name = str(args[0])
+        if self.get_command(ctx, name) is None and not name.startswith("-"):
+            from difflib import get_close_matches
+
+            near = get_close_matches(name, self.list_commands(ctx), n=1)
+            hint = f" Did you mean '{near[0]}'?" if near else ""
+            raise click.UsageError(f"No such command '{name}'.{hint}", ctx)
+        return super().resolve_command(ctx, args)
+
     def format_help(self, ctx: click.Context, formatter: click.HelpFormatter) -> None:
         """Write examples first, then usage and the commands."""
         write_example(EXAMPLE, formatter)
@@ -59,11 +72,11 @@ class LazyGroup(click.Group):
         return ctx.exit(BAD_DATA if message else DONE)
 
 
-@click.group(cls=LazyGroup, context_settings={"help_option_names": ["-h", "--help"]})
+@click.group("daylayer", cls=LazyGroup, context_settings={"help_option_names": ["-h", "--help"]})
 @click.version_option(package_name="daylayer", message="%(prog)s %(version)s")
 def main() -> None:
     """From one morning balloon profile to the day that follows.
 
-    Results go to stdout, remarks to stderr. Exit codes: 0 done, 1 bad data or no answer, 2 bad usage, 3 done with a
+    Results are written to stdout, remarks to stderr. Exit codes: 0 done, 1 bad data or no answer, 2 bad usage, 3 done with a
     doubt.
     """

@@ -17,7 +17,6 @@ from __future__ import annotations
 
 import contextlib
 import os
-import secrets
 import sys
 from collections.abc import Callable, Iterable
 from datetime import UTC, datetime
@@ -184,7 +183,7 @@ class Outputs:
             raise DaylayerError("its folder does not exist", place=target, remedy="make the folder first")
         if final.exists() and not final.is_file():
             return final  # a device or a pipe is written as it is: renaming over it would replace it
-        draft = final.with_name(f".{final.stem}-{secrets.token_hex(4)}{final.suffix}")
+        draft = final.with_name(f".{final.stem}-{os.urandom(4).hex()}{final.suffix}")
         self._moves.append((draft, final))
         return draft
 
