@@ -1,0 +1,260 @@
+"""The air aloft: a measured profile tabulated for exact integrals, sinking, warming and moving to a later profile.
+
+The vertical coordinate of the mixed layer is the mass of air below a level, m = (p_surface - p) / g [kg m-2]:
+hydrostatic density is then exact and both budgets close to round-off. Potential temperature and specific humidity
+are linear between the levels of a fine table that contains every measured level; virtual potential temperature is
+computed from them.
+
+Sinking follows mass flux W = -D m up to the mass ``cap`` (2 km) and is constant above, so that the position of
+every parcel depends on S = integral of D dt alone and all integrals have closed forms (below: derived from
+dm/dS = -min(m, cap)).
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Sequence
+from typing import NamedTuple
+
+import numpy as np
+from numpy.typing import NDArray
+
+from forcing.air import GRAVITY
+from forcing.ground import pressure_by_theta
+from forcing.profile import Profile
+from forcing.speed import COMPILED, kernel
+
+FINE_STEP = 25.0  # [m] finest table step; linear in height and linear in mass then differ by less than 1e-4 K
+TABLE_TOP = 7000.0  # [m] above ground; a mixed layer on land is not seen deeper (DESIGN of depths: C040 several km)
+SINKING_CAP_HEIGHT = 2000.0  # [m] sinking grows linearly up to here, then is constant
+
+Numbers = Sequence[float]
+
+
+class Aloft(NamedTuple):
+    """Tabulated air aloft; every member is a sequence of n floats but the last.
+
+    ``height`` [m above ground], ``mass`` [kg m-2 of air below], ``theta`` [K], ``humidity`` [kg kg-1], ``u``, ``v``
+    [m s-1]; ``sum_*`` running integrals over mass from the ground; ``exp_*`` and ``log_*`` the weighted integrals
+    that sinking and rising through the cap need; ``cap`` [kg m-2].
+    """
+
+    height: Numbers
+    mass: Numbers
+    theta: Numbers
+    humidity: Numbers
+    u: Numbers
+    v: Numbers
+    sum_theta: Numbers
+    sum_humidity: Numbers
+    exp_theta: Numbers
+    exp_humidity: Numbers
+    log_theta: Numbers
+    log_humidity: Numbers
+    cap: float
+
+
+class Sample(NamedTuple):
+    """The air at one mass level, and integrals of it from the ground."""
+
+    theta: float
+    humidity: float
+    u: float
+    v: float
+    sum_theta: float
+    sum_humidity: float
+    sum_theta_below_cap: float
+    sum_humidity_below_cap: float
+
+
+@kernel
+def locate(levels: Numbers, x: float) -> int:
+    """Index i with levels[i] <= x < levels[i + 1], kept inside the table."""
+    low = 0
+    high = len(levels) - 1
+    while high - low > 1:
+        middle = (low + high) // 2
+        if levels[middle] <= x:
+            low = middle
+        else:
+            high = middle
+    return low
+
+
+@kernel
+def _running(mass: Numbers, values: Numbers, running: Numbers, x: float, i: int) -> float:
+    slope = (values[i + 1] - values[i]) / (mass[i + 1] - mass[i])
+    d = x - mass[i]
+    return running[i] + d * (values[i] + 0.5 * slope * d)
+
+
+@kernel
+def _running_exp(mass: Numbers, values: Numbers, running: Numbers, cap: float, x: float, i: int) -> float:
+    slope = (values[i + 1] - values[i]) / (mass[i + 1] - mass[i])
+    low = math.exp((mass[i] - cap) / cap)
+    high = math.exp((x - cap) / cap)
+    here = values[i] + slope * (x - mass[i])
+    return running[i] + cap * (high * here - low * values[i]) - cap * cap * slope * (high - low)
+
+
+@kernel
+def _running_log(mass: Numbers, values: Numbers, running: Numbers, cap: float, x: float, i: int) -> float:
+    """Integral of values * cap / mass from the first level above the ground on."""
+    if i == 0 or x <= mass[i]:
+        return running[i]
+    slope = (values[i + 1] - values[i]) / (mass[i + 1] - mass[i])
+    base = values[i] - slope * mass[i]
+    return running[i] + cap * (base * math.log(x / mass[i]) + slope * (x - mass[i]))
+
+
+@kernel
+def height_of(air: Aloft, mass: float) -> float:
+    """Height above ground [m] of a mass level [kg m-2]."""
+    i = locate(air.mass, mass)
+    f = (mass - air.mass[i]) / (air.mass[i + 1] - air.mass[i])
+    return air.height[i] + f * (air.height[i + 1] - air.height[i])
+
+
+@kernel
+def mass_of(air: Aloft, height: float) -> float:
+    """Mass below [kg m-2] of a height above ground [m]."""
+    i = locate(air.height, height)
+    f = (height - air.height[i]) / (air.height[i + 1] - air.height[i])
+    return air.mass[i] + f * (air.mass[i + 1] - air.mass[i])
+
+
+@kernel
+def _origin(cap: float, mass: float, sunk: float) -> float:
+    """Mass level where the air that is at ``mass`` after sinking ``sunk`` came from."""
+    if mass > cap:
+        start = mass + cap * sunk
+        if start < cap:
+            start = cap * math.exp(mass / cap - 1.0 + sunk)
+        return start
+    start = mass * math.exp(sunk)
+    if start > cap:
+        start = cap * (1.0 + sunk - math.log(cap / mass))
+    return start
+
+
+@kernel
+def _integral(mass: Numbers, values: Numbers, total: Numbers, exps: Numbers, logs: Numbers, cap: float, sunk: float,
+              level: float, start: float) -> float:  # fmt: skip
+    """Integral of a sunken profile from the ground to ``level`` (whose air came from ``start``)."""
+    i = locate(mass, start)
+    if sunk == 0.0:
+        return _running(mass, values, total, start, i)
+    shrink = math.exp(-sunk)
+    if level <= cap:
+        if start <= cap:
+            return shrink * _running(mass, values, total, start, i)
+        c = locate(mass, cap)
+        below = _running(mass, values, total, cap, c)
+        return shrink * (below + _running_exp(mass, values, exps, cap, start, i))
+    c = locate(mass, cap)
+    to_cap = _running(mass, values, total, cap, c)
+    if sunk > 0.0:
+        edge = cap * (1.0 + sunk)
+        e = locate(mass, edge)
+        inside = shrink * (to_cap + _running_exp(mass, values, exps, cap, edge, e))
+        return inside + _running(mass, values, total, start, i) - _running(mass, values, total, edge, e)
+    edge = cap * math.exp(sunk)
+    e = locate(mass, edge)
+    inside = shrink * _running(mass, values, total, edge, e)
+    risen_from = _running_log(mass, values, logs, cap, edge, e)
+    if start < cap:
+        return inside + _running_log(mass, values, logs, cap, start, i) - risen_from
+    risen = _running_log(mass, values, logs, cap, cap, c) - risen_from
+    return inside + risen + _running(mass, values, total, start, i) - to_cap
+
+
+@kernel
+def sample(air: Aloft, level: float, sunk: float) -> Sample:
+    """The air at mass ``level`` [kg m-2] after sinking ``sunk`` = integral of divergence [1], and its integrals."""
+    mass = air.mass
+    cap = air.cap
+    start = level if sunk == 0.0 else _origin(cap, level, sunk)
+    i = locate(mass, start)
+    f = (start - mass[i]) / (mass[i + 1] - mass[i])
+    theta = air.theta[i] + f * (air.theta[i + 1] - air.theta[i])
+    humidity = air.humidity[i] + f * (air.humidity[i + 1] - air.humidity[i])
+    u = air.u[i] + f * (air.u[i + 1] - air.u[i])
+    v = air.v[i] + f * (air.v[i + 1] - air.v[i])
+    st = _integral(mass, air.theta, air.sum_theta, air.exp_theta, air.log_theta, cap, sunk, level, start)
+    sq = _integral(mass, air.humidity, air.sum_humidity, air.exp_humidity, air.log_humidity, cap, sunk, level, start)
+    ct = st
+    cq = sq
+    if level > cap:
+        start = _origin(cap, cap, sunk)
+        ct = _integral(mass, air.theta, air.sum_theta, air.exp_theta, air.log_theta, cap, sunk, cap, start)
+        cq = _integral(mass, air.humidity, air.sum_humidity, air.exp_humidity, air.log_humidity, cap, sunk, cap, start)
+    return Sample(theta, humidity, u, v, st, sq, ct, cq)
+
+
+def _weighted(mass: NDArray[np.float64], values: NDArray[np.float64], cap: float) -> tuple[Numbers, Numbers, Numbers]:
+    """Running plain, exponential and logarithmic integrals at the levels."""
+    d = np.diff(mass)
+    slope = np.diff(values) / d
+    total = np.concatenate(([0.0], np.cumsum(d * 0.5 * (values[1:] + values[:-1]))))
+    weight = np.where(mass >= cap, np.exp(np.minimum((mass - cap) / cap, 50.0)), 0.0)
+    piece = cap * (weight[1:] * values[1:] - weight[:-1] * values[:-1]) - cap * cap * slope * np.diff(weight)
+    exps = np.concatenate(([0.0], np.cumsum(np.where(mass[:-1] >= cap, piece, 0.0))))
+    inner = np.zeros_like(d)
+    base = values[1:-1] - slope[1:] * mass[1:-1]
+    inner[1:] = cap * (base * np.log(mass[2:] / mass[1:-1]) + slope[1:] * d[1:])
+    logs = np.concatenate(([0.0], np.cumsum(inner)))
+    return as_numbers(total), as_numbers(exps), as_numbers(logs)
+
+
+def as_numbers(values: NDArray[np.float64]) -> Numbers:
+    """Hand an array to kernels: plain Python is several times faster on lists than on arrays."""
+    if COMPILED:
+        return np.ascontiguousarray(values, dtype=np.float64)  # type: ignore[return-value]
+    return values.tolist()  # type: ignore[no-any-return]
+
+
+def tabulate(mass: NDArray[np.float64], height: NDArray[np.float64], theta: NDArray[np.float64],
+             humidity: NDArray[np.float64], u: NDArray[np.float64], v: NDArray[np.float64], cap: float) -> Aloft:  # fmt: skip
+    """Build the table from arrays (n,) of increasing mass [kg m-2] and height [m above ground]."""
+    st, et, lt = _weighted(mass, theta, cap)
+    sq, eq, lq = _weighted(mass, humidity, cap)
+    plain = [as_numbers(x) for x in (height, mass, theta, humidity, u, v)]
+    return Aloft(*plain, st, sq, et, eq, lt, lq, cap)
+
+
+def from_profile(profile: Profile) -> Aloft:
+    """Tabulate a measured profile up to 7 km or its own top."""
+    top = min(float(profile.height[-1]), TABLE_TOP)
+    even = np.arange(0.0, top, FINE_STEP)
+    levels = np.unique(np.concatenate((even, profile.height[profile.height <= top], [top])))
+    if top > SINKING_CAP_HEIGHT:
+        levels = np.unique(np.append(levels, SINKING_CAP_HEIGHT))
+    keep = np.concatenate(([True], np.diff(levels) > 1e-3))
+    levels = levels[keep]
+    theta, humidity, u, v = (
+        np.interp(levels, profile.height, x) for x in (profile.theta, profile.humidity, profile.u, profile.v)
+    )
+    pressure = pressure_by_theta(levels, theta, humidity, profile.surface_pressure)
+    mass = (profile.surface_pressure - pressure) / GRAVITY
+    cap = float(np.interp(SINKING_CAP_HEIGHT, levels, mass)) if top > SINKING_CAP_HEIGHT else 10.0 * float(mass[-1])
+    return tabulate(mass, levels, theta, humidity, u, v, cap)
+
+
+def on_same_levels(air: Aloft, other: Profile) -> Aloft:
+    """A later profile on the mass levels of ``air``; above its own top the last value above the table is held."""
+    later = from_profile(other)
+    mass = np.asarray(air.mass)
+    theta, humidity, u, v = (
+        np.interp(mass, np.asarray(later.mass), np.asarray(x)) for x in (later.theta, later.humidity, later.u, later.v)
+    )
+    return tabulate(mass, np.asarray(air.height), theta, humidity, u, v, air.cap)
+
+
+def linear(*, theta_ground: float, gradient: float, top: float = 20000.0, humidity_ground: float = 0.0,
+           humidity_gradient: float = 0.0) -> Aloft:  # fmt: skip
+    """Constant-density air (mass = height) with linear gradients [K m-1, kg kg-1 m-1], for closed solutions."""
+    levels = np.array([0.0, 1e-3 * top, 0.5 * top, top])
+    zero = np.zeros_like(levels)
+    theta = theta_ground + gradient * levels
+    humidity = humidity_ground + humidity_gradient * levels
+    return tabulate(levels, levels, theta, humidity, zero, zero, 10.0 * top)

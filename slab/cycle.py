@@ -1,0 +1,274 @@
+"""The driver: a run through day and night from one profile; it picks day or night from the virtual surface flux."""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from forcing.air import KAPPA, P_REFERENCE, coriolis, each, temperature
+from forcing.cover import ground as ground_of
+from forcing.errors import ModelError, ScenarioError
+from forcing.longwave_column import Anchor
+from forcing.profile import Profile
+from forcing.scenario_types import Scenario
+from forcing.surface import Ground, soil_layers
+from forcing.table import LATENT, LATER_WEIGHT, NET_RADIATION, SENSIBLE, SHORTWAVE, Knots, knot_times, tabulate
+from slab.column import Aloft, as_numbers, from_profile, on_same_levels, sample
+from slab.daytime import EAST, HEAT, MASS, MEMBERS, NORTH, SOIL, SOIL_LAYERS, VAPOUR, Offsets, Place
+from slab.growth import CLOSURES, Closure
+from slab.handover import Handover, column_after_slab
+from slab.march import EVENING, FAILED, RAN_TO_END, REACHED_TOP, STANDARD, Control, march, scratch
+from slab.nightfall import MORNING, NightCourse, through_night
+from slab.radiation import NightSky, anchored, free_air_heating, sky_column
+from slab.record import FIELDS, INDEX, NAMES
+from slab.start import GroundStart, first_mass, ground_start, yesterday
+
+Array = NDArray[np.float64]
+
+KNOT = 600.0  # [s] forcing is linear between knots, and long-wave is refreshed at each
+HEIGHTS = (1.5, 2.0, 9.0, 10.0)  # [m] temperatures kept beside the screen's
+STOPS = {RAN_TO_END: "end of the run", REACHED_TOP: "top of the profile reached"}
+DAY, NIGHT = "day", "night"
+
+
+@dataclass(frozen=True, slots=True)
+class Part:
+    """One stretch of day or night, from knot ``first`` to ``last``, with what is needed to draw its column again.
+
+    ``air`` the column handed over at its start and ``later`` the profile it moves to; ``start`` what the column held:
+    heat [K kg m-2] and vapour [kg m-2]; ``course`` the night's own notes.
+    """
+
+    kind: str
+    first: int
+    last: int
+    air: Aloft
+    later: Aloft | None
+    course: NightCourse | None
+
+
+@dataclass(frozen=True, slots=True)
+class Run:
+    """A finished run, by knot.
+
+    Attributes
+    ----------
+    time : ndarray, shape (n,)
+        Seconds since 1970 UTC.
+    fields : dict of ndarray, shape (n,)
+        The record's members by name (`slab.record.NAMES`); NaN after a stop.
+    temperatures : ndarray, shape (n, k)
+        [K] at ``heights`` [m above ground].
+    day : ndarray of bool, shape (n,)
+        Whether the slab (True) or the night's column (False) carried the knot.
+    residual_top : ndarray, shape (n,)
+        [m above ground], NaN before a layer was left behind.
+    parts : tuple of Part
+    stopped : str
+        Why the run ended.
+    """
+
+    scenario: Scenario
+    time: Array
+    fields: dict[str, Array]
+    heights: tuple[float, ...]
+    temperatures: Array
+    day: NDArray[np.bool_]
+    residual_top: Array
+    parts: tuple[Part, ...]
+    stopped: str
+    ground: Ground
+    soil_start: GroundStart | None
+    anchor: Anchor
+    radiative_heating: float
+    surface_pressure: float
+
+
+def closure_of(scenario: Scenario) -> Closure:
+    """The closure of a scenario's [run], with the user's own factors where given."""
+    run = scenario.run
+    closure = CLOSURES[run.entrainment]
+    if run.entrainment != "encroachment":
+        closure = closure._replace(flux_ratio=run.flux_ratio)
+    if run.shear_factor is not None:
+        closure = closure._replace(shear_factor=run.shear_factor)
+    if run.spin_up_factor is not None:
+        closure = closure._replace(spin_up_factor=run.spin_up_factor)
+    return closure
+
+
+class _Stage:
+    """What stays the same through a run, and the record that is being written."""
+
+    def __init__(self, scenario: Scenario, control: Control, heights: tuple[float, ...]) -> None:
+        profile = scenario.profile
+        self.scenario, self.control, self.heights = scenario, control, heights
+        self.ground = ground_of(scenario.cover, scenario.soil_moisture)
+        time = knot_times(profile.valid.timestamp(), scenario.run.hours, KNOT)
+        column = (profile.pressure, each(temperature, profile.theta, profile.pressure), profile.humidity)
+        self.heating = free_air_heating(*column)
+        self.knots: Knots = tabulate(scenario, time, self.heating)
+        if scenario.later is not None and np.any(self.knots.table[:, 6] != 0.0):
+            raise ScenarioError(
+                "both a later profile and a divergence are given",
+                place=scenario.source,
+                remedy="the later profile already holds the day's sinking: drop one of them",
+            )
+        self.anchor = anchored(profile, yesterday(scenario)[1])
+        self.place = Place(
+            pressure=profile.surface_pressure,
+            coriolis=coriolis(scenario.site.latitude),
+            fluxes_given=float(self.knots.fluxes_given),
+            friction_given=float(self.knots.friction_given),
+            wind_given=float(self.knots.wind_given),
+            net_radiation_given=float(self.knots.net_radiation_given),
+            has_later=float(scenario.later is not None),
+            cumulus=1.0,
+            kinematic=0.0,
+        )
+        self.closure = closure_of(scenario)
+        self.rows = [as_numbers(row) for row in self.knots.table]
+        self.record = [as_numbers(np.full(FIELDS + len(heights), math.nan)) for _ in time]
+        self.times = as_numbers(time)
+
+    def column_now(self, air: Aloft) -> tuple[Array, Array, Array]:
+        """Pressure [Pa], temperature [K], humidity of a table, and of the profile above it."""
+        profile = self.scenario.profile
+        pressure = profile.surface_pressure - 9.80665 * np.asarray(air.mass)
+        theta, humidity = np.asarray(air.theta), np.asarray(air.humidity)
+        above = profile.pressure < pressure[-1] - 1.0
+        p = np.concatenate((pressure, profile.pressure[above]))
+        t = np.concatenate((theta, profile.theta[above])) * (p / P_REFERENCE) ** KAPPA
+        return p, t, np.concatenate((humidity, profile.humidity[above]))
+
+    def later_on(self, air: Aloft, first: int) -> tuple[Aloft | None, Array]:
+        """The later profile on a table's levels, and its weight counted from knot ``first``."""
+        weight = self.knots.table[:, LATER_WEIGHT]
+        if self.scenario.later is None:
+            return None, weight
+        left = 1.0 - weight[first]
+        relative = np.clip((weight - weight[first]) / left, 0.0, 1.0) if left > 1e-9 else np.zeros_like(weight)
+        return on_same_levels(air, self.scenario.later), relative
+
+
+def _by_day(stage: _Stage, first: int, start: Handover) -> tuple[Part, int, Handover]:
+    """March the slab from knot ``first``; returns the part, why it ended and what it hands over."""
+    air = start.air
+    later, weight = stage.later_on(air, first)
+    for row, value in zip(stage.rows, weight, strict=True):
+        row[LATER_WEIGHT] = float(value)  # type: ignore[index]
+    mass = first_mass(air)
+    here = sample(air, mass, 0.0)
+    y = as_numbers(np.zeros(MEMBERS))
+    state: list[float] = y  # type: ignore[assignment]
+    state[MASS], state[HEAT], state[VAPOUR] = mass, start.heat, start.vapour
+    inside = np.asarray(air.mass) <= mass
+    state[EAST], state[NORTH] = (float(np.mean(np.asarray(x)[inside])) for x in (air.u, air.v))
+    state[SOIL : SOIL + SOIL_LAYERS] = list(start.soil)
+    work = scratch()
+    work.memory[0] = start.skin
+    sky = sky_column(
+        *stage.column_now(air), stage.anchor, given=stage.knots.longwave_given,
+        shade=not stage.scenario.weather.given("shortwave_down_W_m2"),
+    )  # fmt: skip
+    last = len(stage.times) - 1
+    at = Offsets(0.0, 0.0, 0.0, 0.0, 0.0, 0.0)
+    reached, reason, at = march(
+        first, last, stage.times, stage.rows, state, at, air, later or air, stage.place, stage.ground,  # type: ignore[arg-type]
+        as_numbers(np.array(soil_layers(stage.ground))), stage.closure, stage.control, work, sky,
+        as_numbers(np.array(stage.heights)), stage.record,  # type: ignore[arg-type]
+    )  # fmt: skip
+    del here
+    if reason == FAILED:
+        raise ModelError(f"the mixed layer could not be stepped at knot {reached}", remedy="check wind and temperature input")
+    wind = (state[EAST], state[NORTH])
+    column, heat, vapour = column_after_slab(air, later, at, state, wind, softened=False)
+    depth = float(np.interp(state[MASS], np.asarray(air.mass), np.asarray(air.height)))
+    handover = Handover(
+        column, heat, vapour, tuple(float(t) for t in state[SOIL : SOIL + SOIL_LAYERS]), float(work.memory[0]), depth
+    )
+    return Part(DAY, first, reached, air, later, None), reason, handover
+
+
+def _by_night(stage: _Stage, first: int, start: Handover) -> tuple[Part, int, Handover]:
+    """Carry the night's column from knot ``first``; returns the part, why it ended and what it hands over."""
+    later, weight = stage.later_on(start.air, first)
+    table = stage.knots.table.copy()
+    table[:, LATER_WEIGHT] = weight
+    sky = NightSky(*stage.column_now(start.air), stage.anchor, given=stage.knots.longwave_given)
+    course = through_night(
+        first, len(stage.times) - 1, stage.knots.time, table, start, stage.ground, stage.place, sky, later,
+        stage.heights, stage.record,  # type: ignore[arg-type]
+    )  # fmt: skip
+    return Part(NIGHT, first, course.reached, start.air, later, course), course.reason, course.handover
+
+
+def _starts_by_night(stage: _Stage) -> bool:
+    """Whether the surface takes heat from the air at the start: by the given fluxes, or a sun too low to feed it."""
+    row = stage.knots.table[0]
+    if stage.knots.fluxes_given:
+        return bool(row[SENSIBLE] + 0.07 * row[LATENT] <= 0.0)
+    if stage.knots.net_radiation_given:
+        return bool(row[NET_RADIATION] <= 0.0)
+    return bool((1.0 - stage.ground.albedo) * row[SHORTWAVE] < 60.0)
+
+
+def run(scenario: Scenario, *, control: Control = STANDARD, heights: tuple[float, ...] = HEIGHTS) -> Run:
+    """Run a scenario through its hours.
+
+    Parameters
+    ----------
+    scenario : Scenario
+    control : Control
+        Accuracy of the day's march.
+    heights : tuple of float
+        Heights [m above ground] at which temperatures are kept.
+
+    Raises
+    ------
+    ModelError
+        Where the equations cannot be solved.
+    ScenarioError
+        Where inputs contradict each other.
+    """
+    stage = _Stage(scenario, control, heights)
+    soil = None if stage.knots.fluxes_given else ground_start(scenario, stage.ground)
+    layers = soil.soil if soil is not None else (float(scenario.profile.temperature[0]),) * SOIL_LAYERS
+    skin = soil.skin if soil is not None else float(scenario.profile.temperature[0])
+    handover = Handover(from_profile(scenario.profile), 0.0, 0.0, layers, skin, math.nan)
+    parts: list[Part] = []
+    night = _starts_by_night(stage)
+    last = len(stage.times) - 1
+    first, reason = 0, EVENING
+    while first < last and reason in (EVENING, MORNING):
+        part, reason, handover = (_by_night if night else _by_day)(stage, first, handover)
+        parts.append(part)
+        first, night = part.last, not night
+    return _collect(stage, tuple(parts), STOPS.get(reason, "end of the run"), soil)
+
+
+def _collect(stage: _Stage, parts: tuple[Part, ...], stopped: str, soil: GroundStart | None) -> Run:
+    table = np.array([list(row) for row in stage.record])
+    day = np.zeros(len(table), dtype=bool)
+    residual = np.full(len(table), math.nan)
+    for part in parts:
+        day[part.first : part.last + 1] = part.kind == DAY
+        if part.course is not None:
+            start = table[part.first, INDEX["sunk"]]
+            top = _residual_before(parts, part, table)
+            residual[part.first : part.last + 1] = top * np.exp(start - table[part.first : part.last + 1, INDEX["sunk"]])
+    return Run(
+        scenario=stage.scenario, time=stage.knots.time, fields={n: table[:, INDEX[n]] for n in NAMES},
+        heights=stage.heights, temperatures=table[:, FIELDS:], day=day, residual_top=residual, parts=parts,
+        stopped=stopped, ground=stage.ground, soil_start=soil, anchor=stage.anchor,
+        radiative_heating=stage.heating, surface_pressure=stage.place.pressure,
+    )  # fmt: skip
+
+
+def _residual_before(parts: tuple[Part, ...], night: Part, table: Array) -> float:
+    """Depth [m] of the mixed layer that the night inherited, NaN where the run starts with it."""
+    before = [part for part in parts if part.kind == DAY and part.last == night.first]
+    return float(table[max(before[-1].last - 1, 0), INDEX["depth"]]) if before else math.nan

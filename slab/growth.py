@@ -1,0 +1,137 @@
+"""Mixed-layer growth: entrainment closures and the budgets of a zero-order jump.
+
+Budgets of heat, moisture and momentum of a slab under a sharp jump: Lilly (1968), Carson (1973), Tennekes (1973),
+Tennekes and Driedonks (1981). The slab is carried by its *deficit* against the air aloft, Q = M theta_m - integral
+of the profile over the slab's mass M: without sinking dQ/dt is the surface flux alone, so both budgets close to
+round-off. All fluxes are mass fluxes: heat [K kg m-2 s-1], vapour [kg m-2 s-1], entrainment [kg m-2 s-1].
+"""
+
+from __future__ import annotations
+
+import math
+from typing import NamedTuple
+
+from forcing.air import GRAVITY, VIRTUAL, saturation_humidity
+
+from forcing.speed import kernel
+from slab.column import Aloft, Sample, locate, sample
+
+SMALLEST_JUMP = 1e-6  # [K] keeps the growth rate finite where the air aloft is neutral; the growth cap then decides
+SHEAR_IN_CAP = 5.0  # share of friction velocity cubed in the mixed-layer velocity scale (Troen and Mahrt 1986, recalled 0.6 x 8)
+
+
+class Closure(NamedTuple):
+    """Entrainment closure: flux ratio, shear and spin-up factors of Batchvarova and Gryning (1991).
+
+    ``growth_cap`` limits growth to that share of the mixed-layer velocity scale (0: no cap); ``encroachment`` 1 sets
+    the depth by heat alone, without a jump.
+    """
+
+    flux_ratio: float
+    shear_factor: float
+    spin_up_factor: float
+    growth_cap: float
+    encroachment: float
+
+
+ENCROACHMENT = Closure(0.0, 0.0, 0.0, 0.0, 1.0)
+BUOYANT = Closure(0.2, 0.0, 0.0, 0.5, 0.0)
+SHEARED = Closure(0.2, 2.5, 8.0, 0.5, 0.0)
+CLOSURES = {"encroachment": ENCROACHMENT, "buoyant": BUOYANT, "sheared": SHEARED}
+
+
+class Slab(NamedTuple):
+    """Mixed-layer state at one instant, derived from mass and deficits."""
+
+    theta: float
+    humidity: float
+    jump_theta: float
+    jump_humidity: float
+    jump_virtual: float
+    air: Sample
+
+
+@kernel
+def velocity_scale(depth: float, buoyancy_flux: float, theta: float) -> float:
+    """Convective velocity w* [m s-1] from the kinematic virtual flux [K m s-1] (Deardorff 1970); 0 where it is down."""
+    if buoyancy_flux <= 0.0:
+        return 0.0
+    return (GRAVITY * depth * buoyancy_flux / theta) ** (1.0 / 3.0)
+
+
+@kernel
+def entrainment(closure: Closure, virtual_flux: float, friction_velocity: float, depth: float, theta: float,
+                jump_virtual: float) -> float:  # fmt: skip
+    """Entrainment velocity [m s-1] of air into the slab.
+
+    w_e = [a F_v + b u*^3 theta / (g h)] / [jump_v + c u*^2 theta / (g h)] (Batchvarova and Gryning 1991, 1994), with
+    F_v the kinematic virtual surface flux [K m s-1], positive upward; never negative; capped by the share
+    ``growth_cap`` of the velocity scale (w*^3 + 5 u*^3)^(1/3), which ends the burst into a neutral residual layer.
+    """
+    ratio = theta / (GRAVITY * depth)
+    supply = closure.flux_ratio * virtual_flux + closure.shear_factor * friction_velocity**3 * ratio
+    if supply <= 0.0:
+        return 0.0
+    resist = jump_virtual + closure.spin_up_factor * friction_velocity**2 * ratio
+    speed = supply / max(resist, SMALLEST_JUMP)
+    if closure.growth_cap > 0.0:
+        scale = velocity_scale(depth, virtual_flux, theta) ** 3 + SHEAR_IN_CAP * friction_velocity**3
+        speed = min(speed, closure.growth_cap * scale ** (1.0 / 3.0))
+    return speed
+
+
+@kernel
+def slab_at(mass: float, heat: float, vapour: float, air: Sample) -> Slab:
+    """State of a slab of mass M [kg m-2] with deficits of heat [K kg m-2] and vapour [kg m-2]."""
+    theta = (heat + air.sum_theta) / mass
+    humidity = (vapour + air.sum_humidity) / mass
+    jump_virtual = air.theta * (1.0 + VIRTUAL * air.humidity) - theta * (1.0 + VIRTUAL * humidity)
+    return Slab(theta, humidity, air.theta - theta, air.humidity - humidity, jump_virtual, air)
+
+
+@kernel
+def encroached_mass(air: Aloft, heat: float, vapour: float, sunk: float, least: float) -> float:
+    """Mass [kg m-2] at which the slab's virtual temperature first meets the profile's, from ``least`` upward.
+
+    Walks the table's levels, then bisects inside the one where the jump changes sign; the mass of the table's top
+    where it never does.
+    """
+    mass = air.mass
+    top = mass[len(mass) - 1]
+    low = least
+    if slab_at(low, heat, vapour, sample(air, low, sunk)).jump_virtual >= 0.0:
+        return low
+    i = locate(mass, least) + 1
+    high = top
+    while i < len(mass):
+        if slab_at(mass[i], heat, vapour, sample(air, mass[i], sunk)).jump_virtual >= 0.0:
+            high = mass[i]
+            break
+        low = mass[i]
+        i += 1
+    if i >= len(mass):
+        return top
+    for _ in range(45):
+        middle = 0.5 * (low + high)
+        if slab_at(middle, heat, vapour, sample(air, middle, sunk)).jump_virtual >= 0.0:
+            high = middle
+        else:
+            low = middle
+    return high
+
+
+@kernel
+def cumulus_fraction(humidity: float, top_temperature: float, top_pressure: float, jump_humidity: float,
+                     entrainment_velocity: float, convective_velocity: float) -> float:  # fmt: skip
+    """Area fraction [0..0.5] of cumulus rooted in the mixed layer.
+
+    A Gaussian-like humidity distribution at the layer's top, fraction = 0.5 + 0.36 atan(1.55 (q - q_sat) / sigma_q)
+    (Cuijpers and Bechtold 1995; recalled), with the variance made by entrainment, sigma_q^2 = jump_q^2 (w_e / w*)
+    (h / delta) (Neggers, Stevens and Neelin 2006; recalled) and an entrainment zone delta of a quarter of h.
+    """
+    if convective_velocity <= 0.0:
+        return 0.0
+    spread = abs(jump_humidity) * 2.0 * math.sqrt(max(entrainment_velocity, 1e-4) / convective_velocity)
+    spread = max(spread, 1e-5)
+    excess = (humidity - saturation_humidity(top_temperature, top_pressure)) / spread
+    return min(0.5, max(0.0, 0.5 + 0.36 * math.atan(1.55 * excess)))

@@ -1,0 +1,123 @@
+"""What one part of a run hands to the next: the whole column, the ground, and how much each held in all."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from slab.column import Aloft, mass_of, sample, tabulate
+from slab.daytime import HEAT, MASS, VAPOUR, Offsets
+from slab.growth import slab_at
+from slab.night_grid import Column, Grid
+
+Array = NDArray[np.float64]
+
+
+@dataclass(frozen=True, slots=True)
+class Handover:
+    """State of column and ground at one instant.
+
+    Attributes
+    ----------
+    air : Aloft
+        The whole column as it is now (n,), from the ground to the top of the table.
+    heat, vapour : float
+        Held by the air beyond what ``air`` integrates to [K kg m-2, kg m-2]; it goes to the next lowest layer, so
+        that nothing is lost or made between a layer model and a cell model.
+    soil : tuple of float
+        Soil layers from the top [K].
+    skin : float
+        [K].
+    residual_top : float
+        Top of the last mixed layer [m above ground], NaN before there was one.
+    """
+
+    air: Aloft
+    heat: float
+    vapour: float
+    soil: tuple[float, ...]
+    skin: float
+    residual_top: float
+
+
+def moved(air: Aloft, later: Aloft | None, at: Offsets, mass: Array) -> tuple[Array, Array, Array, Array]:
+    """Theta [K], humidity [kg kg-1] and wind [m s-1] of the air aloft now at mass levels (n,) [kg m-2]."""
+    now = [sample(air, float(m), at.sunk) for m in mass]
+    theta = np.array([s.theta for s in now])
+    humidity = np.array([s.humidity for s in now])
+    u, v = np.array([s.u for s in now]), np.array([s.v for s in now])
+    if later is not None and at.later > 0.0:
+        then = [sample(later, float(m), 0.0) for m in mass]
+        w = at.later
+        theta = (1.0 - w) * theta + w * np.array([s.theta for s in then])
+        humidity = (1.0 - w) * humidity + w * np.array([s.humidity for s in then])
+        u = (1.0 - w) * u + w * np.array([s.u for s in then])
+        v = (1.0 - w) * v + w * np.array([s.v for s in then])
+    return theta + at.warmed, np.maximum(humidity + at.moistened, 1e-7), u, v
+
+
+def column_after_slab(air: Aloft, later: Aloft | None, at: Offsets, y: list[float], wind: tuple[float, float],
+                      softened: bool) -> tuple[Aloft, float, float]:  # fmt: skip
+    """The column under and above a slab of state ``y`` as one table; also the heat and vapour the table leaves out.
+
+    ``softened`` draws the jump as an entrainment zone a quarter of the depth thick (for comparing with soundings),
+    else it is as sharp as the table allows (a metre).
+    """
+    mass = np.asarray(air.mass)
+    height = np.asarray(air.height)
+    top = float(np.interp(y[MASS], mass, height))
+    half = 0.125 * top if softened else 0.5
+    low, high = top - half, min(top + half, float(height[-1]))
+    kept = height[(height < low - 0.5) | (height > high + 0.5)]
+    lid = [float(np.interp(air.cap, mass, height))] if air.cap < mass[-1] else []
+    levels = np.unique(np.concatenate((kept, [0.0, low, high], lid)))
+    level_mass = np.array([mass_of(air, float(z)) for z in levels])
+    aloft = moved(air, later, at, level_mass)
+    here = sample(air, y[MASS], at.sunk)
+    if later is not None and at.later > 0.0:
+        then = sample(later, y[MASS], 0.0)
+        w = at.later
+        here = here._replace(
+            sum_theta=(1.0 - w) * here.sum_theta + w * then.sum_theta,
+            sum_humidity=(1.0 - w) * here.sum_humidity + w * then.sum_humidity,
+        )
+    slab = slab_at(y[MASS], y[HEAT], y[VAPOUR], here)
+    inside = levels <= low
+    values = (slab.theta + at.warmed, max(slab.humidity + at.moistened, 1e-7), *wind)
+    mixed = [np.where(inside, value, above) for value, above in zip(values, aloft, strict=True)]
+    table = tabulate(level_mass, levels, *mixed, air.cap)
+    missing_heat, missing_vapour = 0.0, 0.0
+    if not softened:
+        missing_heat = _content_above(y, values[0], aloft[0], level_mass, top, table.sum_theta)
+        missing_vapour = _content_above(y, values[1], aloft[1], level_mass, top, table.sum_humidity)
+    return table, missing_heat, missing_vapour
+
+
+def _content_above(y: list[float], slab: float, aloft: Array, mass: Array, top: float, running: object) -> float:
+    """Content of slab and air aloft less what the table holds, up to the first table level above the slab."""
+    i = int(np.searchsorted(mass, y[MASS]))
+    at_top = float(np.interp(y[MASS], mass, aloft))
+    exact = slab * y[MASS] + 0.5 * (at_top + float(aloft[i])) * (float(mass[i]) - y[MASS])
+    return exact - float(np.asarray(running)[i])
+
+
+def column_after_night(edges: Array, grid: Grid, state: Column, above: Aloft, later: Aloft | None,
+                       at: Offsets) -> tuple[Aloft, float, float]:  # fmt: skip
+    """The night's cells and the air above them, moved by ``at``, as one table; also the heat and vapour it leaves out."""
+    centre = np.asarray(grid.height)
+    cell_mass = np.concatenate(([0.0], np.cumsum(np.asarray(grid.mass))))
+    upper_height, upper_mass = np.asarray(above.height), np.asarray(above.mass)
+    keep = upper_height >= edges[-1] - 1e-6
+    upper = moved(above, later, at, upper_mass[keep])
+    levels = np.concatenate(([0.0], centre, upper_height[keep]))
+    mass = np.concatenate(([0.0], np.interp(centre, edges, cell_mass), upper_mass[keep]))
+    columns = []
+    for cells, air in zip(state[:4], upper, strict=True):
+        columns.append(np.concatenate(([cells[0]], np.asarray(cells), air)))
+    table = tabulate(mass, levels, *columns, above.cap)
+    held = sample(table, float(cell_mass[-1]), 0.0)
+    heat = float(np.dot(grid.mass, state.theta)) - held.sum_theta
+    vapour = float(np.dot(grid.mass, state.humidity)) - held.sum_humidity
+    return table, heat, vapour

@@ -1,0 +1,269 @@
+"""A night inside a run: the stable column from one hand-over to the next, on the run's own forcing table."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Sequence
+from dataclasses import dataclass
+from typing import NamedTuple
+
+import numpy as np
+from numpy.typing import NDArray
+
+from forcing.air import CP_DRY, STEFAN_BOLTZMANN, VIRTUAL
+from forcing.errors import ModelError
+from forcing.surface import Ground, surface_resistance
+from forcing.table import (
+    ANTHROPOGENIC,
+    CLOUD,
+    CLOUD_BASE,
+    DIVERGENCE,
+    GEOSTROPHIC_U,
+    GEOSTROPHIC_V,
+    HEATING,
+    LATENT,
+    LATER_WEIGHT,
+    LONGWAVE,
+    MOISTENING,
+    NET_RADIATION,
+    SENSIBLE,
+    SHORTWAVE,
+)
+from slab.column import Aloft, mass_of, sample
+from slab.daytime import Offsets, Place, offsets_at
+from slab.handover import Handover, column_after_night, moved
+from slab.march import EVENING, RAN_TO_END
+from slab.night import NightOptions, NightStart, Setup, prepare
+from slab.night_answers import (
+    CROSSING_HEIGHT,
+    DRY_ADIABATIC,
+    fog_depth,
+    flux_needed,
+    friction_velocity,
+    inverse_obukhov,
+    largest_flux,
+    minimum_wind,
+    read_air,
+    regime,
+    rime,
+    sinking_rates,
+    stress_depth,
+)
+from slab.night_grid import Numbers, numbers
+from slab.night_step import advance
+from slab.night_surface import ENERGY, Drive, Link
+from slab.night_terms import Outside, right_side
+from slab.radiation import NightSky
+from slab.record import FIELDS, INDEX
+
+Array = NDArray[np.float64]
+
+CHUNK = 300.0  # [s] long-wave and forcing are held this long (NIGHT column: half of it changes a night by under 0.02 K)
+COLUMN_TOP = 2000.0  # [m]
+MORNING = EVENING + 1
+
+
+class NightNote(NamedTuple):
+    """What the night says at one knot beyond the common record.
+
+    Index of the regime, least and present wind at the crossing height [m s-1], fog depth [m], and 0 dry, 1 dew,
+    2 hoar frost; ``theta``, ``humidity``, ``u``, ``v`` of the cells.
+    """
+
+    regime: int
+    minimum_wind: float
+    crossing_wind: float
+    fog_depth: float
+    deposit: int
+    theta: Array
+    humidity: Array
+    u: Array
+    v: Array
+
+
+@dataclass(frozen=True, slots=True)
+class NightCourse:
+    """What one night leaves: the knot reached, why it ended, the hand-over, offsets of the air aloft, notes by knot."""
+
+    reached: int
+    reason: int
+    handover: Handover
+    height: Array
+    mass: Array
+    notes: dict[int, NightNote]
+    offsets: Offsets
+
+
+def begin(start: Handover, ground: Ground, place: Place, closure: str) -> Setup:
+    """Cells, ground and work space for a night, holding exactly the heat and vapour that were handed over."""
+    air = start.air
+    top = min(COLUMN_TOP, 0.98 * float(air.height[-1]))
+    options = NightOptions(closure=closure, boundary="flux" if place.fluxes_given > 0.0 else "energy", top=top)
+    column = (np.asarray(x) for x in (air.height, air.theta, air.humidity, air.u, air.v))
+    setup = prepare(NightStart(*column, place.pressure, start.skin, start.soil, place.coriolis), ground, options)
+    grid, state = setup.grid, setup.state
+    mass = np.array([mass_of(air, float(z)) for z in edges_of(setup)])
+    held = [sample(air, float(m), 0.0) for m in mass]
+    cells = np.diff(mass)
+    theta = np.diff([s.sum_theta for s in held]) / cells + start.heat / mass[-1]
+    humidity = np.diff([s.sum_humidity for s in held]) / cells + start.vapour / mass[-1]
+    for i in range(len(cells)):
+        grid.mass[i] = float(cells[i])
+        state.theta[i] = float(theta[i])
+        state.humidity[i] = float(humidity[i])
+    return setup
+
+
+def edges_of(setup: Setup) -> Array:
+    """Heights of the cell edges [m], shape (n + 1,)."""
+    grid = setup.grid
+    return np.concatenate(([0.0], np.asarray(grid.interface), [grid.height[-1] + 0.5 * grid.thickness[-1]]))
+
+
+def _outside(setup: Setup, values: Array, heating: Numbers, later_change: tuple[Array, ...], later_rate: float,
+             coriolis: float) -> Outside:  # fmt: skip
+    """What acts on the cells: long-wave, advection, sinking, a later profile, the pressure gradient."""
+    state = setup.state
+    n = len(state.theta)
+    rates = [
+        np.full(n, values[HEATING]) + np.asarray(heating), np.full(n, values[MOISTENING]),
+        np.full(n, -coriolis * values[GEOSTROPHIC_V]), np.full(n, coriolis * values[GEOSTROPHIC_U]),
+    ]  # fmt: skip
+    if later_rate != 0.0:
+        rates = [rate + later_rate * change for rate, change in zip(rates, later_change, strict=True)]
+    out = [numbers(rate) for rate in rates]
+    if values[DIVERGENCE] != 0.0:
+        for held, rate in zip(state[:4], out, strict=True):
+            sinking_rates(float(values[DIVERGENCE]), setup.grid, held, rate)
+    return Outside(out[0], out[1], out[2], out[3], coriolis)
+
+
+def _drive(setup: Setup, ground: Ground, place: Place, values: Array, longwave: float) -> Drive:
+    """What acts on the ground."""
+    foot, state = setup.foot, setup.state
+    absorbed = (1.0 - ground.albedo) * float(values[SHORTWAVE]) + float(values[ANTHROPOGENIC])
+    if place.net_radiation_given > 0.0:
+        emitted = STEFAN_BOLTZMANN * state.skin[0] ** 4
+        longwave = emitted + (float(values[NET_RADIATION]) - (absorbed - float(values[ANTHROPOGENIC]))) / foot.emissivity
+    resistance = surface_resistance(
+        ground, float(values[SHORTWAVE]), state.theta[0] * foot.exner, state.humidity[0], foot.pressure
+    )
+    return Drive(absorbed, longwave, resistance, 0.0, float(values[SENSIBLE]), float(values[LATENT]))
+
+
+def _write(record: list[float], setup: Setup, ground: Ground, drive: Drive, values: Array, link: Link, at: Offsets,
+           totals: Numbers, gained: list[float], heights: Sequence[float]) -> None:  # fmt: skip
+    """One row of the run's record from the night column; slab members hold means over the turbulent depth."""
+    grid, foot, state = setup.grid, setup.foot, setup.state
+    rough = (ground.roughness_momentum, ground.roughness_heat)
+    depth = stress_depth(grid, state, setup.work.exchange, link)
+    low = read_air(grid, foot, state, link, *rough, 2.0)
+    high = read_air(grid, foot, state, link, *rough, 10.0)
+    inside = max(1, int(np.searchsorted(np.asarray(grid.height), depth)))
+    weight = np.asarray(grid.mass[:inside])
+    mean = [float(np.dot(weight, np.asarray(x[:inside])) / weight.sum()) for x in state[:4]]
+    sensible = CP_DRY * foot.exner * link.heat
+    buoyancy = (link.heat * (1.0 + VIRTUAL * mean[1]) + VIRTUAL * mean[0] * link.vapour) / foot.density
+    named = {
+        "depth": depth, "mass": math.nan, "theta": mean[0], "humidity": mean[1], "east": mean[2], "north": mean[3],
+        "jump_theta": math.nan, "jump_humidity": math.nan, "jump_virtual": math.nan, "entrainment": 0.0,
+        "convective_velocity": 0.0, "buoyancy_flux": buoyancy, "cumulus_fraction": 0.0,
+        "shortwave_down": float(values[SHORTWAVE]), "longwave_down": drive.longwave_down,
+        "net_radiation": link.net_radiation, "sensible": sensible, "latent": link.latent_heat * link.vapour,
+        "ground": link.ground, "skin_temperature": state.skin[0],
+        "friction_velocity": friction_velocity(foot, state, link), "inverse_obukhov": inverse_obukhov(foot, state, link),
+        "temperature_2m": low.temperature, "humidity_2m": low.humidity, "wind_10m": high.wind,
+        "sunk": at.sunk, "warmed": at.warmed, "moistened": at.moistened, "later": at.later, "heat": math.nan,
+        "vapour": math.nan, "surface_heat": totals[0], "surface_vapour": totals[1], "aloft_heat": gained[0],
+        "aloft_vapour": gained[1], "sensible_energy": totals[3], "ground_energy": totals[5],
+    }  # fmt: skip
+    if setup.method.boundary != ENERGY:
+        for name in ("net_radiation", "ground", "skin_temperature"):
+            named[name] = math.nan
+    for name, value in named.items():
+        record[INDEX[name]] = value
+    for j, z in enumerate(heights):
+        record[FIELDS + j] = read_air(grid, foot, state, link, *rough, z).temperature
+
+
+def _note(setup: Setup, ground: Ground, drive: Drive, link: Link) -> NightNote:
+    grid, foot, state = setup.grid, setup.foot, setup.state
+    crossing = read_air(grid, foot, state, link, ground.roughness_momentum, ground.roughness_heat, CROSSING_HEIGHT)
+    warm = crossing.temperature + DRY_ADIABATIC * CROSSING_HEIGHT
+    needed = flux_needed(setup.method.boundary, foot, drive, link, warm)
+    possible = largest_flux(crossing.wind, CROSSING_HEIGHT, setup.log_ratio, state.theta[0], foot.density)
+    least = minimum_wind(needed, CROSSING_HEIGHT, setup.log_ratio, state.theta[0], foot.density)
+    return NightNote(
+        regime(needed, possible, link.heat), least, crossing.wind, fog_depth(grid, state), rime(state.skin[0], link.vapour),
+        np.array(state.theta), np.array(state.humidity), np.array(state.u), np.array(state.v),
+    )  # fmt: skip
+
+
+def through_night(first: int, last: int, times: Array, table: Array, start: Handover, ground: Ground, place: Place,
+                  sky: NightSky, later: Aloft | None, heights: Sequence[float], record: Sequence[list[float]],
+                  closure: str = "blend") -> NightCourse:  # fmt: skip
+    """Carry the column from knot ``first`` until the surface feeds it from below again, or to knot ``last``.
+
+    It ends at the second knot in a row with an upward virtual flux.
+
+    Raises
+    ------
+    ModelError
+        Where the column's equations could not be solved.
+    """
+    setup = begin(start, ground, place, closure)
+    state, grid = setup.state, setup.grid
+    centre_mass = np.cumsum(np.asarray(grid.mass)) - 0.5 * np.asarray(grid.mass)
+    change: tuple[Array, ...] = ()
+    if later is not None:
+        own = moved(start.air, None, _NOTHING, centre_mass)
+        other = moved(later, None, _NOTHING, centre_mass)
+        change = tuple(b - a for a, b in zip(own, other, strict=True))
+    totals, gained = numbers([0.0] * 8), [0.0, 0.0]
+    notes: dict[int, NightNote] = {}
+    at, step, upward, k = _NOTHING, 1.0, 0, first
+    while True:
+        span = float(times[min(k + 1, last)] - times[k]) or CHUNK
+        pieces = max(1, math.ceil(span / CHUNK - 1e-9))
+        for piece in range(pieces):
+            f = (piece + 0.5) / pieces
+            values = table[k] + f * (table[min(k + 1, last)] - table[k])
+            down, heating = sky.fluxes(grid, state, setup.foot, float(values[CLOUD]), float(values[CLOUD_BASE]),
+                                         span / pieces)
+            if sky.given:
+                down = float(values[LONGWAVE])
+            later_rate = float(table[min(k + 1, last), LATER_WEIGHT] - table[k, LATER_WEIGHT]) / span
+            outside = _outside(setup, values, heating, change, later_rate, place.coriolis)
+            drive = _drive(setup, ground, place, values, down)
+            if piece == 0:
+                link = right_side(setup.method, grid, setup.foot, setup.soil, drive, outside, state, setup.work.rates,
+                                  setup.work, False)  # fmt: skip
+                _write(record[k], setup, ground, drive, table[k], link, at, totals, gained, heights)
+                notes[k] = _note(setup, ground, drive, link)
+                upward = upward + 1 if record[k][INDEX["buoyancy_flux"]] > 0.0 else 0
+                if k == last or upward >= 2:
+                    reason = RAN_TO_END if k == last else MORNING
+                    return _finish(k, reason, setup, start, later, at, notes)
+            length = span / pieces
+            step = advance(setup.method, grid, setup.foot, setup.soil, drive, outside, state, setup.work, totals,
+                           length, step)  # fmt: skip
+            if step < 0.0:
+                raise ModelError("the night column could not be solved", remedy="check wind and temperature input")
+            gained[0] += length * float(np.dot(grid.mass, outside.theta_rate))
+            gained[1] += length * float(np.dot(grid.mass, outside.humidity_rate))
+        at = offsets_at(at, table[k].tolist(), table[k + 1].tolist(), span, span)
+        k += 1
+
+
+_NOTHING = Offsets(0.0, 0.0, 0.0, 0.0, 0.0, 0.0)
+
+
+def _finish(k: int, reason: int, setup: Setup, start: Handover, later: Aloft | None, at: Offsets,
+            notes: dict[int, NightNote]) -> NightCourse:  # fmt: skip
+    """Close the night: one table of cells and the air above them, moved by what happened to it meanwhile."""
+    grid, state = setup.grid, setup.state
+    air, heat, vapour = column_after_night(edges_of(setup), grid, state, start.air, later, at)
+    residual = start.residual_top * math.exp(-at.sunk) if math.isfinite(start.residual_top) else math.nan
+    handover = Handover(air, heat, vapour, tuple(state.soil), float(state.skin[0]), residual)
+    return NightCourse(k, reason, handover, np.asarray(grid.height), np.cumsum(np.asarray(grid.mass)), notes, at)
+

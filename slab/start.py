@@ -1,0 +1,111 @@
+"""How a run starts: the first turbulent layer, and the temperature of the ground below it."""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from forcing.air import GRAVITY, KAPPA, P_REFERENCE, VIRTUAL
+from forcing.longwave import prata_emissivity
+from forcing.scenario_types import Scenario
+from forcing.sun import solar_position
+from forcing.surface import Ground, periodic_soil, soil_layers
+from forcing.table import anthropogenic_heat, shortwave
+from slab.column import Aloft, as_numbers, mass_of
+from slab.growth import encroached_mass
+
+Array = NDArray[np.float64]
+
+CRITICAL_RICHARDSON = 0.25  # common practice for the top of a turbulent layer (TRADE range 0.24 to 0.39, Zhang et al. 2014)
+SHALLOWEST, DEEPEST = 20.0, 300.0  # [m] bounds of the first layer: stable layers are seen from tens to a few hundred m
+SOIL_DAYS = 4
+SOIL_STEP = 1800.0  # [s]
+YESTERDAY_HEIGHT = 1000.0  # [m] where the residual layer's theta is read
+DAILY_RANGE = 12.0  # [K] assumed between last night and this afternoon where the release itself is an afternoon one
+HOTTEST_SOLAR_HOUR = 15.0
+
+
+@dataclass(frozen=True, slots=True)
+class GroundStart:
+    """Soil layer temperatures from the top [K] (6,), skin temperature [K] and the deep temperature they rest on [K]."""
+
+    soil: tuple[float, ...]
+    skin: float
+    deep: float
+    coldest: float
+    warmest: float
+
+
+def turbulent_depth(height: Array, theta_v: Array, speed: Array) -> float:
+    """Depth [m] of the layer that shear keeps turbulent: lowest bulk Richardson number over 0.25, 20 to 300 m.
+
+    Parameters
+    ----------
+    height, theta_v, speed : ndarray, shape (n,)
+        m above ground, K, m s-1.
+    """
+    shear = np.maximum(speed, 0.1) ** 2
+    richardson = GRAVITY / theta_v[0] * (theta_v - theta_v[0]) * height / shear
+    over = np.nonzero((richardson > CRITICAL_RICHARDSON) & (height > 0.0))[0]
+    depth = float(height[over[0]]) if over.size else DEEPEST
+    return min(max(depth, SHALLOWEST), DEEPEST)
+
+
+def first_mass(air: Aloft) -> float:
+    """Mass [kg m-2] of the first slab: the turbulent layer, or deeper where mixing it would leave it unstable."""
+    height, theta = np.asarray(air.height), np.asarray(air.theta)
+    theta_v = theta * (1.0 + VIRTUAL * np.asarray(air.humidity))
+    depth = turbulent_depth(height, theta_v, np.hypot(np.asarray(air.u), np.asarray(air.v)))
+    return encroached_mass(air, 0.0, 0.0, 0.0, mass_of(air, depth))
+
+
+def _solar_hour(scenario: Scenario, time: Array) -> Array:
+    hour_angle = solar_position(time, scenario.site.latitude, scenario.site.longitude).hour_angle
+    return np.asarray(12.0 + hour_angle * 12.0 / math.pi) % 24.0
+
+
+def yesterday(scenario: Scenario) -> tuple[float, float]:
+    """Coldest and warmest air at the ground [K] of a day like this one.
+
+    A dawn sounding holds both: the surface air, and the residual layer brought dry-adiabatically to the ground. Of an
+    afternoon release only the warm end is known; the cold end is then assumed 12 K lower.
+    """
+    profile = scenario.profile
+    exner = (profile.surface_pressure / P_REFERENCE) ** KAPPA
+    surface = float(profile.theta[0]) * exner
+    above = float(np.interp(YESTERDAY_HEIGHT, profile.height, profile.theta)) * exner
+    hour = float(_solar_hour(scenario, np.array([profile.valid.timestamp()]))[0])
+    if 9.0 < hour < 20.0:
+        warmest = max(surface, min(above, surface + 2.0))
+        return warmest - DAILY_RANGE, warmest
+    return surface, min(max(above, surface + 1.0), surface + 25.0)
+
+
+def ground_start(scenario: Scenario, ground: Ground) -> GroundStart:
+    """Soil temperatures after days of the same forcing, skin free (see `forcing.surface.periodic_soil`).
+
+    The deep temperature is the mean of the coldest and warmest air; air temperature is a sine between them.
+    """
+    coldest, warmest = yesterday(scenario)
+    deep = 0.5 * (coldest + warmest)
+    profile = scenario.profile
+    time = profile.valid.timestamp() + np.arange(0.0, 86400.0, SOIL_STEP)
+    hour = _solar_hour(scenario, time)
+    air = deep + 0.5 * (warmest - coldest) * np.cos((hour - HOTTEST_SOLAR_HOUR) * math.pi / 12.0)
+    humidity = np.full(time.shape, float(np.mean(profile.humidity[profile.height <= 500.0])))
+    vapour = float(humidity[0]) * profile.surface_pressure / 0.622
+    cloud = scenario.weather.sample("cloud_fraction", time)
+    clear = np.array([prata_emissivity(vapour, float(t)) * 5.670374e-8 * t**4 for t in air])
+    longwave = clear + cloud * (1.0 - clear / (5.670374e-8 * air**4)) * 5.670374e-8 * air**4
+    speed = float(np.mean(np.hypot(profile.u, profile.v)[profile.height <= 300.0]))
+    out = as_numbers(np.zeros(len(soil_layers(ground))))
+    tables = (shortwave(scenario, time), longwave, air, humidity, np.full(time.shape, max(speed, 2.0)),
+              np.full(time.shape, 500.0), anthropogenic_heat(scenario, time))  # fmt: skip
+    skin = periodic_soil(
+        ground, soil_layers(ground), *(as_numbers(x) for x in tables), 20.0, 20.0, profile.surface_pressure, deep,
+        SOIL_STEP, SOIL_DAYS, out,
+    )  # type: ignore[arg-type]  # fmt: skip
+    return GroundStart(tuple(float(x) for x in out), float(skin), deep, coldest, warmest)
