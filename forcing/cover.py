@@ -9,13 +9,13 @@ from __future__ import annotations
 import csv
 import math
 from collections.abc import Mapping
-from dataclasses import dataclass, field, fields, replace
+from dataclasses import dataclass, field, replace
 from difflib import get_close_matches
 from functools import cache
 from importlib.resources import files
 
 from forcing.errors import CoverError
-from forcing.surface import NO_EVAPORATION, Ground
+from forcing.exchange import NO_EVAPORATION, Ground
 
 BLENDING_HEIGHT = 60.0  # m, where wind over a patchwork is common to all patches (Wieringa 1986: 60 m; recalled)
 # Sellers et al. 1992 (J. Geophys. Res. 97, 19033): ln r = 8.206 - 4.255 W, W saturation of the upper soil (recalled)
@@ -108,6 +108,10 @@ def names() -> tuple[str, ...]:
     return tuple(table())
 
 
+def _of(name: str, values: Mapping[str, float], parts: tuple[tuple[float, Cover], ...] = ()) -> Cover:
+    return Cover(name, **values, parts=parts)  # type: ignore[arg-type]
+
+
 def _known(name: str) -> Cover:
     wanted = " ".join(name.replace("_", " ").lower().split())
     rows = table().get(wanted)
@@ -115,7 +119,7 @@ def _known(name: str) -> Cover:
         close = get_close_matches(wanted, names(), n=1, cutoff=0.5)
         meant = f'did you mean "{close[0]}"? ' if close else ""
         raise CoverError(f'unknown land cover "{name}"', remedy=f"{meant}known: {', '.join(names())}")
-    return Cover(wanted, **{key: one.value for key, one in rows.items()})
+    return _of(wanted, {key: one.value for key, one in rows.items()})
 
 
 def adapt(base: Cover, changes: Mapping[str, object], *, name: str | None = None) -> Cover:
@@ -203,7 +207,7 @@ def mixture(parts: Mapping[Cover, float]) -> Cover:
     for key in ("leaf_area", "stomatal_resistance_min", "stomatal_radiation", "stomatal_humidity"):
         values[key] = mean(key, "vegetation_fraction")
     name = " + ".join(f"{share:.0%} {part.name}" for part, share in kept)
-    return Cover(name, **values, parts=tuple((share, part) for part, share in kept))
+    return _of(name, values, tuple((share, part) for part, share in kept))
 
 
 def soil_resistance(moisture: float) -> float:
@@ -261,6 +265,3 @@ def anthropogenic_course(local_hour: float) -> float:
     """
     day = math.tau * local_hour / 24.0
     return 1.0 - 0.40 * math.cos(day - math.tau * 3.0 / 24.0) + 0.18 * math.cos(2.0 * day - math.tau * 2.0 * 8.0 / 24.0)
-
-
-PROPERTIES = tuple(one.name for one in fields(Cover) if one.name not in ("name", "parts"))

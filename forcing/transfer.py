@@ -3,7 +3,8 @@
 At a given resistance the skin temperature follows from the energy balance (all terms fall with it, so there is one
 answer). Around it stands the stability: in unstable air Newton's rule on the logarithms of resistance and friction
 velocity, with the convective gusts of Beljaars 1995 (Q. J. R. Meteorol. Soc. 121, 255) in the wind; in stable air a
-bracketed Newton's rule on the inverse Obukhov length. The derivatives are exact, so that a warm start needs two or three rounds.
+bracketed Newton's rule on the inverse Obukhov length. The derivatives are exact, so that a warm start needs two or three
+rounds. Named tuples are unpacked into local names first, which plain Python reads much faster.
 """
 
 from __future__ import annotations
@@ -17,17 +18,21 @@ from forcing.air import (
     KARMAN,
     R_VAPOUR,
     VIRTUAL,
+    latent_heat,
     saturation_vapour_pressure,
     saturation_vapour_pressure_ice,
 )
-from forcing.similarity import stable, unstable
+from forcing.similarity import stable_spans, unstable_spans
 from forcing.speed import kernel
 
 GUSTINESS = 1.2  # share of the convective velocity that acts as wind, Beljaars 1995 (recalled)
 CALM_WIND = 0.5  # m s-1: meandering and slope winds keep at least this much shear in calm air (common practice)
 ZETA_MAX = 5.0  # stability is held beyond; Beljaars & Holtslag 1991 were fitted to about 10 (recalled)
-TOLERANCE = 1e-6  # of the last Newton step; the error left is its square
+TOLERANCE = 1e-5  # of the last Newton step; the error left is its square
 ROUNDS = 60
+STEP_MAX = 40.0  # K in one round
+SUBLIMATION = 2.834e6  # J kg-1, in the slope of saturation over ice only
+SETTLED = 2e-5  # K, last step of the skin temperature within the rounds for stability
 
 
 class Balance(NamedTuple):
@@ -45,19 +50,10 @@ class Balance(NamedTuple):
     resistance: float  # of the surface to vapour [s m-1]
     ceiling: float  # highest skin temperature [K], melting point over snow
     ice: float  # 1: saturation over ice
-    latent_fixed: float
+    latent_heat: float  # J kg-1
     virtual_air: float  # virtual temperature of the air
     wind: float
     depth: float
-
-
-class Skin(NamedTuple):
-    """Skin temperature at one aerodynamic resistance, and how the virtual difference answers."""
-
-    temperature: float
-    step: float  # size of the last Newton step [K]
-    virtual_difference: float  # skin-side minus air virtual temperature [K]
-    slope: float  # d(virtual difference)/d ln(resistance)
 
 
 class Geometry(NamedTuple):
@@ -82,189 +78,245 @@ class Transfer(NamedTuple):
 
 
 @kernel
-def skin_humidity(balance: Balance, temperature: float) -> tuple[float, float]:
+def skin_humidity(pressure: float, ice: float, temperature: float) -> tuple[float, float]:
     """Saturation humidity at the skin [kg/kg] and its slope [K-1] (Clausius-Clapeyron for the slope)."""
-    if balance.ice > 0.0 and temperature < 273.15:
+    if ice > 0.0:
         vapour = saturation_vapour_pressure_ice(temperature)
-        heat = 2.834e6  # sublimation, J kg-1
+        heat = SUBLIMATION
     else:
         vapour = saturation_vapour_pressure(temperature)
-        heat = 2.5e6
-    rest = balance.pressure - (1.0 - EPSILON) * vapour
+        heat = latent_heat(temperature)
+    rest = pressure - (1.0 - EPSILON) * vapour
     saturated = EPSILON * vapour / rest
-    return saturated, saturated * balance.pressure / rest * heat / (R_VAPOUR * temperature * temperature)
+    return saturated, saturated * pressure / rest * heat / (R_VAPOUR * temperature * temperature)
 
 
 @kernel
-def skin_at(balance: Balance, resistance: float, guess: float, tolerance: float, rounds: int) -> Skin:
-    """Skin temperature by Newton's rule at a given aerodynamic ``resistance`` [s m-1]."""
+def skin_at(
+    balance: Balance, resistance: float, guess: float, tolerance: float, rounds: int
+) -> tuple[float, float, float, float]:
+    """Skin temperature by Newton's rule at a given aerodynamic ``resistance`` [s m-1].
+
+    Returns the temperature [K], the size of the last step [K], the virtual temperature difference skin minus air [K] that
+    drives the buoyancy, and its change per unit of ln(resistance), in which the skin is free to answer.
+    """
+    (
+        absorbed,
+        emission,
+        conductance,
+        soil,
+        air,
+        humidity,
+        pressure,
+        capacity,
+        latent,
+        closed,
+        ceiling,
+        ice,
+        _,
+        _,
+        _,
+        _,
+    ) = balance
     temperature = guess
-    step = 0.0
-    saturated = 0.0
-    slope = 0.0
-    heat = balance.heat_capacity / resistance
-    total = resistance
-    falling = 1.0
+    heat = capacity / resistance
     for _ in range(rounds):
-        saturated, slope = skin_humidity(balance, temperature)
-        excess = saturated - balance.humidity
-        total = resistance + balance.resistance if excess > 0.0 else resistance  # dew meets no stomata
-        vapour = balance.latent_capacity / total
-        warm = temperature - balance.air_temperature
-        emitted = balance.emission * temperature * temperature * temperature
+        saturated, slope = skin_humidity(pressure, ice, temperature)
+        excess = saturated - humidity
+        total = resistance + closed if excess > 0.0 else resistance  # dew meets no stomata
+        vapour = latent / total
+        emitted = emission * temperature * temperature * temperature
+        falling = 4.0 * emitted + heat + vapour * slope + conductance
         left = (
-            balance.absorbed
+            absorbed
             - emitted * temperature
-            - heat * warm
+            - heat * (temperature - air)
             - vapour * excess
-            - balance.soil_conductance * (temperature - balance.soil_temperature)
+            - conductance * (temperature - soil)
         )
-        falling = 4.0 * emitted + heat + vapour * slope + balance.soil_conductance
         step = left / falling
-        if step > 40.0:
-            step = 40.0
-        elif step < -40.0:
-            step = -40.0
-        if temperature + step > balance.ceiling:
-            step = balance.ceiling - temperature
+        if step > STEP_MAX:
+            step = STEP_MAX
+        elif step < -STEP_MAX:
+            step = -STEP_MAX
+        if temperature + step > ceiling:
+            step = ceiling - temperature
         temperature += step
-        if abs(step) < tolerance:
+        if -tolerance < step < tolerance:
             break
-    excess = saturated - balance.humidity + slope * step
+    excess += slope * step
     share = resistance / total
-    moist = VIRTUAL * balance.air_temperature
-    dry = 1.0 + VIRTUAL * balance.humidity
-    warm = temperature - balance.air_temperature
-    difference = dry * warm + moist * excess * share
+    warm = temperature - air
+    moist = VIRTUAL * air
+    dry = 1.0 + VIRTUAL * humidity
     # a larger resistance holds back heat and (partly) vapour: the skin answers by warming
-    gain = 0.0
-    if temperature < balance.ceiling:
-        gain = (heat * warm + balance.latent_capacity / total * excess * share) / falling
+    gain = 0.0 if temperature >= ceiling else (heat * warm + vapour * excess * share) / falling
     answer = (dry + moist * slope * share) * gain + moist * excess * share * (1.0 - share)
-    return Skin(temperature, abs(step), difference, answer)
+    return temperature, abs(step), dry * warm + moist * excess * share, answer
 
 
 @kernel
 def solve_unstable(
-    balance: Balance, geometry: Geometry, start: Skin, ln_resistance: float, ln_friction: float
+    balance: Balance, geometry: Geometry, skin: float, ln_resistance: float, ln_friction: float
 ) -> Transfer:
-    """Newton's rule on ln(resistance) and ln(friction velocity) in convective air."""
+    """Newton's rule on p = ln(resistance) and v = ln(friction velocity) in convective air."""
     p = ln_resistance
     v = ln_friction
-    temperature = start.temperature
     gravity = GRAVITY / balance.virtual_air
     wind2 = balance.wind * balance.wind
+    depth = balance.depth
+    zm, zh, z0m, z0h, log_m, log_h = geometry
+    ln_karman = math.log(KARMAN)
     x = 0.0
     count = 0.0
     for _ in range(ROUNDS):
         count += 1.0
         resistance = math.exp(p)
-        friction = math.exp(v)
-        skin = skin_at(balance, resistance, temperature, 1e-3, 2)
-        temperature = skin.temperature
-        difference = skin.virtual_difference
-        slope = skin.slope
+        skin, moved, difference, slope = skin_at(balance, resistance, skin, 1e-3, 1)
         if difference < 1e-9:  # a step into stable air: come back towards neutral
             difference = 1e-9
             slope = 0.0
         buoyancy = gravity * difference / resistance
-        buoyancy_p = gravity * slope / resistance - buoyancy
-        cube = KARMAN / (friction * friction * friction)
-        x = -buoyancy * cube
-        x_p = -buoyancy_p * cube
-        gust = GUSTINESS * math.exp(math.log(buoyancy * balance.depth) / 3.0)
-        speed2 = wind2 + gust * gust
-        speed_p = gust * gust / speed2 * buoyancy_p / (3.0 * buoyancy)
-        top_m = unstable(geometry.wind_height * x)
-        low_m = unstable(geometry.roughness_momentum * x)
-        top_h = unstable(geometry.heat_height * x)
-        low_h = unstable(geometry.roughness_heat * x)
-        fm = geometry.log_momentum - top_m.psi_momentum + low_m.psi_momentum
-        fh = geometry.log_heat - top_h.psi_heat + low_h.psi_heat
-        gm = (top_m.phi_momentum - low_m.phi_momentum) / (x * fm)  # d ln fm / dx
-        gh = (top_h.phi_heat - low_h.phi_heat) / (x * fh)
-        first = v + math.log(fm / KARMAN) - 0.5 * math.log(speed2)
-        second = v + p + math.log(KARMAN / fh)
-        a11 = 1.0 - 3.0 * x * gm
-        a12 = gm * x_p - speed_p
-        a21 = 1.0 + 3.0 * x * gh
-        a22 = 1.0 - gh * x_p
+        ln_buoyancy_p = slope / difference - 1.0
+        x = -KARMAN * buoyancy * math.exp(-3.0 * v)
+        gust2 = GUSTINESS * GUSTINESS * math.exp(math.log(buoyancy * depth) * 2.0 / 3.0)
+        speed2 = wind2 + gust2
+        fm, fh, phi_m, phi_h = unstable_spans(zm, zh, z0m, z0h, log_m, log_h, x)
+        gm = phi_m / fm  # d ln fm / d ln(-x)
+        gh = phi_h / fh
+        first = v + math.log(fm) - ln_karman - 0.5 * math.log(speed2)
+        second = v + p + ln_karman - math.log(fh)
+        a11 = 1.0 - 3.0 * gm
+        a12 = (gm - gust2 / speed2 / 3.0) * ln_buoyancy_p
+        a21 = 1.0 + 3.0 * gh
+        a22 = 1.0 - gh * ln_buoyancy_p
         determinant = a11 * a22 - a12 * a21
         if abs(determinant) < 1e-6:
             determinant = 1e-6
         dv = (a12 * second - a22 * first) / determinant
         dp = (a21 * first - a11 * second) / determinant
-        dv = min(1.0, max(-1.0, dv))
-        dp = min(1.0, max(-1.0, dp))
+        far = max(abs(dv), abs(dp))
+        if far > 1.0:
+            dv /= far
+            dp /= far
         v += dv
         p += dp
-        x += x_p * dp - 3.0 * x * dv
-        if abs(dv) + abs(dp) < TOLERANCE and skin.step < 1e-3:
+        x *= 1.0 + ln_buoyancy_p * dp - 3.0 * dv
+        if far < TOLERANCE and moved < SETTLED and difference > 1e-9:
             break
-    return Transfer(temperature, math.exp(p), math.exp(v), x, count)
+    return Transfer(skin, math.exp(p), math.exp(v), x, count)
+
+
+@kernel
+def friction_for(geometry: Geometry, speed: float, buoyancy: float) -> float:
+    """Friction velocity [m s-1] at a wind ``speed`` and a buoyancy flux [m2 s-3]: the largest that fits.
+
+    Where a stable flux is more than this wind can bring down, the stability is held at `ZETA_MAX`.
+    """
+    zm, zh, z0m, z0h, log_m, log_h = geometry
+    v = math.log(KARMAN * speed / log_m)
+    if buoyancy == 0.0:
+        return math.exp(v)
+    highest = ZETA_MAX / max(zm, zh)
+    for _ in range(ROUNDS):
+        x = -KARMAN * buoyancy * math.exp(-3.0 * v)
+        if x > highest:
+            break
+        if x < 0.0:
+            fm, _, phi_m, _ = unstable_spans(zm, zh, z0m, z0h, log_m, log_h, x)
+        else:
+            fm, _, phi_m, _ = stable_spans(zm, zh, z0m, z0h, log_m, log_h, x)
+        slope = 1.0 - 3.0 * phi_m / fm
+        if slope <= 0.05:
+            break
+        step = -(v + math.log(fm / (KARMAN * speed))) / slope
+        v += min(1.0, max(-1.0, step))
+        if abs(step) < 1e-10:
+            return math.exp(v)
+    return KARMAN * speed / stable_spans(zm, zh, z0m, z0h, log_m, log_h, highest)[0]
+
+
+@kernel
+def bracket_unstable(balance: Balance, geometry: Geometry, skin: float, ln_neutral: float) -> Transfer:
+    """Bisection on ln(resistance) below the neutral one, for the rare balance that Newton's rule circles round.
+
+    That happens where moisture and heat pull the buoyancy in opposite ways.
+    """
+    zm, zh, z0m, z0h, log_m, log_h = geometry
+    gravity = GRAVITY / balance.virtual_air
+    low = ln_neutral - 12.0
+    high = ln_neutral
+    friction = 0.0
+    x = 0.0
+    count = 0.0
+    for _ in range(ROUNDS):
+        count += 1.0
+        p = 0.5 * (low + high)
+        resistance = math.exp(p)
+        skin, _, difference, _ = skin_at(balance, resistance, skin, 1e-9, 40)
+        buoyancy = max(gravity * difference / resistance, 1e-15)
+        gust = GUSTINESS * math.exp(math.log(buoyancy * balance.depth) / 3.0)
+        friction = friction_for(geometry, math.sqrt(balance.wind * balance.wind + gust * gust), buoyancy)
+        x = -KARMAN * buoyancy / (friction * friction * friction)
+        fh = unstable_spans(zm, zh, z0m, z0h, log_m, log_h, x)[1]
+        if fh > KARMAN * friction * resistance:
+            low = p
+        else:
+            high = p
+    return Transfer(skin, math.exp(0.5 * (low + high)), friction, x, count)
 
 
 @kernel
 def solve_stable(
-    balance: Balance, geometry: Geometry, start: Skin, guess: float, neutral_resistance: float
+    balance: Balance, geometry: Geometry, skin: float, guess: float, neutral_resistance: float
 ) -> Transfer:
-    """Find 1/L in stable air: a bracketed Newton's rule, from the neutral side where two states are possible.
+    """Find x = 1/L in stable air: a bracketed Newton's rule, from the neutral side where two states are possible.
 
     Weak exchange cools the skin, which weakens the exchange: over rough ground with a poorly conducting skin two states
-    may exist. The better coupled one is taken, whatever the guess. Beyond ``ZETA_MAX`` the stability is held, so that the
+    may exist. The better coupled one is taken, whatever the guess. Beyond `ZETA_MAX` the stability is held, so that the
     skin never decouples without bound.
     """
-    highest = ZETA_MAX / max(geometry.wind_height, geometry.heat_height)
-    buoyancy = GRAVITY / (balance.virtual_air * balance.wind * balance.wind)
-    held = 4.0 * balance.emission * start.temperature**3 + balance.soil_conductance
+    zm, zh, z0m, z0h, log_m, log_h = geometry
+    wind = balance.wind
+    highest = ZETA_MAX / max(zm, zh)
+    buoyancy = GRAVITY / (balance.virtual_air * wind * wind)
+    held = 4.0 * balance.emission * balance.air_temperature**3 + balance.soil_conductance
     # the heat flux falls with the temperature difference by at most a third of its neutral slope (phi = 1 + 5 zeta)
     single = balance.heat_capacity / neutral_resistance < 3.0 * held
-    x = min(guess, highest) if single and guess > 0.0 else 0.0
+    x = min(guess, highest) if single and guess > 0.0 else 1e-6 * highest
     low = 0.0
     high = highest
-    temperature = start.temperature
+    capped = False
     friction = 0.0
     resistance = neutral_resistance
-    capped = False
     count = 0.0
     for _ in range(ROUNDS):
         count += 1.0
-        top_m = stable(geometry.wind_height * x)
-        low_m = stable(geometry.roughness_momentum * x)
-        top_h = stable(geometry.heat_height * x)
-        low_h = stable(geometry.roughness_heat * x)
-        fm = geometry.log_momentum - top_m.psi_momentum + low_m.psi_momentum
-        fh = geometry.log_heat - top_h.psi_heat + low_h.psi_heat
-        small = max(x, 1e-12)
-        gm = (top_m.phi_momentum - low_m.phi_momentum) / (small * fm)
-        gh = (top_h.phi_heat - low_h.phi_heat) / (small * fh)
-        if x < 1e-9:  # the limit of (phi - 1)/x, 1 + b (1 + c) times the height
-            gm = 5.0 * (geometry.wind_height - geometry.roughness_momentum) / fm
-            gh = 5.0 * (geometry.heat_height - geometry.roughness_heat) / fh
-        friction = KARMAN * balance.wind / fm
+        fm, fh, phi_m, phi_h = stable_spans(zm, zh, z0m, z0h, log_m, log_h, x)
+        gm = phi_m / fm  # d ln fm / d ln x
+        gh = phi_h / fh
+        friction = KARMAN * wind / fm
         resistance = fh / (KARMAN * friction)
-        skin = skin_at(balance, resistance, temperature, 1e-6, 6)
-        temperature = skin.temperature
+        skin, moved, difference, slope = skin_at(balance, resistance, skin, 1e-4, 4)
         ratio = fh / (fm * fm)
-        left = x * ratio + buoyancy * skin.virtual_difference
+        left = x * ratio + buoyancy * difference
         if left < 0.0:
             low = x
             if x >= highest:
                 break
         else:
             high = x
-        slope = ratio * (1.0 + x * (gh - 2.0 * gm)) + buoyancy * skin.slope * (gm + gh)
-        step = -left / slope if slope > 0.0 else 0.5 * (high - low)
-        new = x + step
+        rising = ratio * (1.0 + gh - 2.0 * gm) + buoyancy * slope * (gm + gh) / x
+        new = x - left / rising if rising > 0.0 else highest
         if new > high and high == highest and not capped:
             capped = True  # first see whether the answer lies below the bound at all
             new = highest
-        elif new < low or new > high:
+        elif new <= low or new > high:
             new = 0.5 * (low + high)
-        step = new - x
-        x = new
+        step = (new - x) / x
         friction *= 1.0 - gm * step
         resistance *= 1.0 + (gm + gh) * step
-        if abs(step) <= TOLERANCE * (x + 1e-6 * highest):
+        x = new
+        if abs(step) < TOLERANCE and moved < SETTLED:
             break
-    return Transfer(temperature, resistance, friction, x, count)
+    return Transfer(skin, resistance, friction, x, count)
