@@ -15,7 +15,7 @@ from forcing.air import VIRTUAL, ZERO_CELSIUS
 from forcing.units import STYLES, Style, Unit
 from forcing.units import SUFFIXES as UNITS
 from slab.pictures_style import LARGE, LINE, PAGE, PLAIN, SMALL, Ruler, halo, spread
-from slab.products.sounding import cautions, sentence
+from slab.products.sounding import cautions, restyle, sentence
 
 Array = NDArray[np.float64]
 Document = dict[str, Any]
@@ -203,6 +203,7 @@ def _wind(axes: Axes, data: _Data, document: Document, style: Style) -> None:
         axes.text(0.5, 0.5, "no wind\nin the profile", transform=axes.transAxes, ha="center", fontsize=SMALL)
         axes.set_xticks([])
         return
+    axes.set_title("arrows: to where it blows,\nnorth is up", fontsize=SMALL, loc="left", pad=2.0)
     factor = UNITS[style.speed].factor
     speed = np.hypot(data.u, data.v) / factor
     axes.plot(speed, data.height, color="#333333", linewidth=1.2)
@@ -239,7 +240,7 @@ def _marks(
     frame = panels[0].get_position()
     known = [top for top in document["tops"] if top["height_m"] is not None and top["height_m"] <= data.ceiling]
     width = RIGHT - WORDS - 0.012
-    blocks = [ruler.wrap(document["definitions"][top["definition"]], width) for top in known]
+    blocks = [ruler.wrap(restyle(document["definitions"][top["definition"]], style), width) for top in known]
     places = [frame.y0 + frame.height * top["height_m"] / data.ceiling for top in known]
     rows = 1.25 + max((len(block) for block in blocks), default=1)
     silent = [top for top in document["tops"] if top["height_m"] is None]
@@ -261,5 +262,5 @@ def _marks(
         for n, text in enumerate(block):
             figure.text(WORDS, word - (n + 1.05) * LINE, text, fontsize=SMALL, va="center", color="#333333")
     for n, top in enumerate(silent):
-        text = f"{top['definition']}: not told, {top['detail']}"
+        text = f"{top['definition']}: not told, {restyle(top['detail'], style)}"
         figure.text(WORDS, frame.y0 + (len(silent) - 1 - n) * LINE, text, fontsize=SMALL, va="center", color="#333333")

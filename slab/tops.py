@@ -71,14 +71,14 @@ class Top:
 
 
 EXPLANATIONS: Final[dict[str, str]] = {
-    "half a kelvin": "first height where virtual potential temperature is 0.5 K over its minimum below 4 km",
-    "parcel": "where surface air, lifted dry, meets air of its own virtual potential temperature (Holzworth)",
+    "half a kelvin": "virtual potential temperature first 0.5 K over its minimum (below 4 km)",
+    "parcel": "surface air lifted dry meets its own virtual temperature (Holzworth)",
     "parcel + 2 K": "the same with 2 K added at the surface (agency practice)",
-    "morning rule": "dry adiabat from the surface temperature plus 5 K (Holzworth, EPA-454/R-99-005 6.5.1)",
-    "virtual gradient": "strongest rise of virtual potential temperature over 100 m, from 100 m to 4 km",
-    "humidity gradient": "strongest fall of specific humidity over 100 m, from 100 m to 4 km",
-    "bulk richardson": "where the bulk Richardson number from the ground first passes its critical value",
-    "forecaster's rule": "how high the lapse rate stays dry adiabatic and the mixing ratio constant",
+    "morning rule": "dry adiabat from the surface temperature + 5 K (EPA-454/R-99-005 6.5.1)",
+    "virtual gradient": "steepest rise of virtual potential temperature, 100 m to 4 km",
+    "humidity gradient": "steepest fall of specific humidity, 100 m to 4 km",
+    "bulk richardson": "bulk Richardson number from the ground passes its critical value",
+    "forecaster's rule": "lapse rate dry adiabatic and mixing ratio constant up to here",
 }
 
 

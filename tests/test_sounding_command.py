@@ -105,6 +105,22 @@ def test_us_units_are_feet_knots_and_fahrenheit(morning: str) -> None:
     assert not re.search(r"\d m\b(?!\s*[sgW-])", result.stdout.split("where the top")[0])
 
 
+def test_heights_inside_words_follow_the_units() -> None:
+    from forcing.units import METRIC, US
+    from slab.products.sounding import restyle
+
+    words = "never passes 0.25 below the profile's end (6000 m), 10 m/s, 100 m to 4 km, 5 K"
+    assert restyle(words, METRIC) == words
+    assert restyle(words, US) == (
+        "never passes 0.25 below the profile's end (19690 ft), 10 m/s, 330 ft to 13120 ft, 5 K"
+    )
+
+
+def test_release_is_told_in_utc_and_local_solar_time(morning: str) -> None:
+    # 11:00 UTC at 95 W: 95 / 15 h = 6 h 20 min behind
+    assert "2024-06-01 11:00 UTC, 04:40 local mean solar time" in run("sounding", morning, *MOMENT, *PLACE).stdout
+
+
 def test_levels_can_be_left_out(morning: str) -> None:
     assert "\nlevels\n" in run("sounding", morning, *MOMENT, *PLACE).stdout
     assert "\nlevels\n" not in run("sounding", morning, *MOMENT, *PLACE, "--no-levels").stdout

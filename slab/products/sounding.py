@@ -27,6 +27,7 @@ The document is a plain dict, also what `daylayer sounding --json` writes. Missi
 
 from __future__ import annotations
 
+import re
 from datetime import datetime
 from math import isfinite
 from typing import Any, Final
@@ -160,6 +161,16 @@ def cautions(document: Document, style: Style) -> list[dict[str, str]]:
         found.append({"code": "G5", "text": text})
     text = "Not a weather briefing. Use official aviation weather sources; heights are above ground or sea level as stated."
     return [*found, {"code": "A1", "text": text}]
+
+
+_METRES = re.compile(r"(\d+(?:\.\d+)?) (k?m)\b(?!/)")
+
+
+def restyle(words: str, style: Style) -> str:
+    """Words of a detail or an explanation with their heights in the style's unit; metric ones stay as they are."""
+    if style.length == "m":
+        return words
+    return _METRES.sub(lambda found: style.height(float(found[1]) * (1000.0 if found[2] == "km" else 1.0)), words)
 
 
 def sentence(document: Document, style: Style) -> str:

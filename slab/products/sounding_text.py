@@ -5,11 +5,12 @@ from __future__ import annotations
 import csv
 import io
 from collections.abc import Sequence
+from datetime import datetime, timedelta
 from textwrap import wrap
 from typing import Any
 
 from forcing.units import STYLES, ZERO_CELSIUS_K, Style
-from slab.products.sounding import cautions, sentence
+from slab.products.sounding import cautions, restyle, sentence
 
 Document = dict[str, Any]
 MISSING = "-"
@@ -49,6 +50,16 @@ def _plain(value: float | None, decimals: int) -> str:
     return MISSING if value is None else f"{value:.{decimals}f}"
 
 
+def _released(about: dict[str, Any]) -> str:
+    """Time in UTC and, where the longitude is known, local mean solar time (UTC plus longitude / 15 per hour)."""
+    valid = datetime.fromisoformat(about["valid"])
+    told = f"{valid:%Y-%m-%d %H:%M} UTC"
+    if about["longitude"] is None:
+        return told
+    east = (about["longitude"] + 180.0) % 360.0 - 180.0
+    return f"{told}, {valid + timedelta(hours=east / 15.0):%H:%M} local mean solar time"
+
+
 def _head(document: Document, style: Style) -> list[str]:
     about = document["profile"]
     latitude, longitude = about["latitude"], about["longitude"]
@@ -63,6 +74,7 @@ def _head(document: Document, style: Style) -> list[str]:
     reach, pressure = style.height(about["top_m"]), _plain(about["surface_pressure_hPa"], 1)
     lines = [
         f"  release   {name}, {position}, {ground} above sea level",
+        f"  released  {_released(about)}",
         f"  file      {source}",
         f"  levels    {about['levels']}, up to {reach} above ground; surface pressure {pressure} hPa",
     ]
@@ -75,13 +87,15 @@ def _head(document: Document, style: Style) -> list[str]:
 def _repairs(document: Document, style: Style) -> list[str]:
     lines = ["repairs" if document["repairs"] else "repairs: none"]
     if document["repairs"]:
-        rows = [(one["name"], str(one["count"]), one["detail"]) for one in document["repairs"]]
+        rows = [(one["name"], str(one["count"]), restyle(one["detail"], style)) for one in document["repairs"]]
         made = _left_first(("name", "count", "rule"), ("", "", ""), rows, words=1)
         lines += [made[0], *made[2:]]  # these columns have no units
     lines += ["", "suspect levels, kept (heights above ground)" if document["flags"] else "suspect levels: none"]
     if document["flags"]:
         header, units = ("test", "height", "what was found"), ("", style.length, "")
-        rows = [(f["name"], style.height(f["height_m"], unit=False), f["detail"]) for f in document["flags"]]
+        rows = [
+            (f["name"], style.height(f["height_m"], unit=False), restyle(f["detail"], style)) for f in document["flags"]
+        ]
         lines += _left_first(header, units, rows, words=1)
     return lines
 
@@ -89,9 +103,9 @@ def _repairs(document: Document, style: Style) -> list[str]:
 def _tops(document: Document, style: Style) -> list[str]:
     rows = []
     for top in document["tops"]:
-        meaning = document["definitions"].get(top["definition"], "")
+        meaning = restyle(document["definitions"].get(top["definition"], ""), style)
         rows.append((top["definition"], style.height(top["height_m"], unit=False), meaning))
-        rows.append(("", "", f"({top['detail']})"))
+        rows.append(("", "", f"({restyle(top['detail'], style)})"))
     span = document["tops_range"]
     lines = ["where the top is, by definition (heights above ground)"]
     lines += _left_first(("definition", "height", "meaning"), ("", style.length, ""), rows, words=1)
@@ -104,7 +118,7 @@ def _inversion(document: Document, style: Style) -> list[str]:
     lines = ["at the ground (heights above it)"]
     for key, rule in (("inversion", "rising"), ("inversion_tables", "tables")):
         found = document[key]
-        meaning = document["definitions"][f"inversion ({rule})"]
+        meaning = restyle(document["definitions"][f"inversion ({rule})"], style)
         if found is None:
             text = "none"
         else:
@@ -112,7 +126,8 @@ def _inversion(document: Document, style: Style) -> list[str]:
                 f"{style.height(found['base_m'])} to {style.height(found['top_m'])}, "
                 f"{style.difference(found['strength_K'])} warmer at its top than at the lowest level"
             )
-        lines += [f"  surface inversion      {text}", f"  {'':21}  ({rule}: {meaning})"]
+        lines.append(f"  surface inversion      {text}")
+        lines += [f"{'':25}{line}" for line in wrap(f"({rule}: {meaning})", WIDTH - 25)]
     layer = document["superadiabatic"]
     text = "none"
     if layer is not None:
