@@ -17,7 +17,7 @@ if TYPE_CHECKING:
     from forcing.sounding import Profile
 
 GIVEN, ASSUMED = "given", "assumed"
-STEP_COVER = "bare soil"
+STEP_COVER = "green crop"
 STEP_SOIL_MOISTURE = 0.25
 
 

@@ -8,7 +8,7 @@ from __future__ import annotations
 import tomllib
 from collections.abc import Mapping
 from dataclasses import replace
-from datetime import datetime
+from datetime import date, datetime
 from pathlib import Path
 from typing import Any
 
@@ -128,7 +128,10 @@ def build(settings: Settings, *, folder: Path, source: str, text: str = "", part
 def _absolute(settings: Settings, sections: Mapping[str, Section], folder: Path) -> Settings:
     out: dict[str, object] = {"title": settings["title"]} if settings.get("title") else {}
     for name, section in sections.items():
-        values = dict(section.values)
+        values = {
+            key: value.isoformat() if isinstance(value, date) else value  # a datetime is a date too
+            for key, value in section.values.items()
+        }
         for key in ("file", "later", "fluxes"):
             value = values.get(key)
             if isinstance(value, str):
@@ -194,7 +197,7 @@ def from_flags(
     longitude: float | None = None,
     elevation: float | None = None,
     zone: str | None = None,
-    cover: str | None = None,
+    cover: str | Mapping[str, float] | None = None,
     soil_moisture: float | None = None,
     cloud: float | None = None,
     wind: float | None = None,
@@ -212,6 +215,8 @@ def from_flags(
         Degrees north, degrees east, m above sea level of the site; the release site's where not given.
     zone : str
         IANA zone name of the site.
+    cover : str or mapping
+        Name of a land cover, or area fractions by name.
     cloud : float
         Cloud fraction, 0 to 1.
     wind, wind_from : float

@@ -103,26 +103,28 @@ def _zone_remedy(name: str, lower: Mapping[str, str]) -> str:
 
 def read_cover(section: Section) -> tuple[Cover, float]:
     """Land cover with the overrides of the section, and the soil moisture (0 wilting point to 1 field capacity)."""
-    from dataclasses import fields, replace
-
-    from forcing.cover import cover
+    from forcing.cover import LIMITS, adapt, cover
     from forcing.errors import CoverError
 
+    wanted: str | dict[str, float]
+    mixed = section.values.get("cover")
+    if isinstance(mixed, Mapping):
+        shares = Section(section.file, "surface.cover", mixed)
+        wanted = {name: shares.number(name, 0.0, 1.0) or 0.0 for name in mixed}
+    else:
+        wanted = section.text("cover") or DEFAULT_COVER
+    section.only([*SURFACE_KEYS, *LIMITS])
+    changes = {key: section.number(key, *bounds) for key, bounds in LIMITS.items() if key in section.values}
     try:
-        found = cover(section.text("cover") or DEFAULT_COVER)
+        found = cover(wanted)
     except CoverError as problem:
         raise CoverError(problem.problem, place=section.place("cover"), remedy=problem.remedy) from None
+    try:
+        found = adapt(found, changes) if changes else found
+    except CoverError as problem:
+        raise CoverError(problem.problem, place=section.place(next(iter(changes))), remedy=problem.remedy) from None
     moisture = section.number("soil_moisture", 0.0, 1.0)
-    known = {one.name: one for one in fields(found)}
-    changes: dict[str, object] = {}
-    for key in section.values:
-        if key in SURFACE_KEYS:
-            continue
-        if key not in known or not isinstance(getattr(found, key), float | int):
-            numbers = [name for name in known if isinstance(getattr(found, name), float | int)]
-            section.only([*SURFACE_KEYS, *numbers])
-        changes[key] = section.number(key)
-    return replace(found, **changes), DEFAULT_SOIL_MOISTURE if moisture is None else moisture
+    return found, DEFAULT_SOIL_MOISTURE if moisture is None else moisture
 
 
 def read_site(section: Section, sounding_position: tuple[float | None, float | None, float | None], title: str) -> Site:
@@ -169,11 +171,8 @@ def _prepared(sounding: Sounding, valid: datetime | None, site: Site, section: S
         latitude = site.latitude
     if longitude is None and sounding.longitude is None:
         longitude = site.longitude
-    released = release_elevation(sounding)
-    if elevation is None and sounding.elevation is None:
-        # without a stated elevation a release near the site's height was on the site's ground
-        near = released is None or abs(released - site.elevation) <= REBASE_FROM_M
-        elevation = site.elevation if near else None
+    if elevation is None and release_elevation(sounding) is None:
+        elevation = site.elevation
     return prepare(
         sounding,
         valid=valid if sounding.valid is None else None,
@@ -194,7 +193,8 @@ def release_elevation(sounding: Sounding) -> float | None:
 def read_profiles(sections: Mapping[str, Section], folder: Path, title: str, parts: Parts | None) -> Profiles:
     """Profiles as released and on the ground of the site, by the named re-basing rule."""
     section = sections["profile"]
-    if parts is not None and parts.same(section, _PROFILE_KEYS):
+    place = ("latitude", "longitude", "elevation")
+    if parts is not None and parts.same(section, _PROFILE_KEYS) and parts.same(sections["site"], place):
         original, later = parts.original, parts.later_original
         site = read_site(sections["site"], (original.latitude, original.longitude, original.elevation), title)
     else:

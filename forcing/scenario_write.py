@@ -9,7 +9,6 @@ from __future__ import annotations
 import json
 import os
 from collections.abc import Iterator, Mapping
-from datetime import date, datetime
 from pathlib import Path
 
 from forcing.keys import KEYS
@@ -102,15 +101,17 @@ def _value(value: object) -> str:
     """A value as TOML writes it."""
     if isinstance(value, bool):
         return "true" if value else "false"
-    if isinstance(value, datetime | date):
-        return f'"{value.isoformat()}"'
     if isinstance(value, int | float):
         return repr(value)
     if isinstance(value, str):
         # a TOML basic string is a JSON string but for DEL and the escapes of surrogates
         return json.dumps(value, ensure_ascii=False).replace("\x7f", "\\u007f")
     if isinstance(value, Mapping):
-        return "{ " + ", ".join(f"{key} = {_value(one)}" for key, one in value.items()) + " }"
+        return (
+            "{ "
+            + ", ".join(f"{_value(key) if ' ' in key else key} = {_value(one)}" for key, one in value.items())
+            + " }"
+        )
     if isinstance(value, list | tuple):
         return "[" + ", ".join(_value(one) for one in value) + "]"
     raise TypeError(f"{type(value).__name__} has no place in a scenario")
