@@ -7,7 +7,7 @@ from datetime import UTC, datetime
 
 import numpy as np
 
-from forcing.air import CP_DRY, GRAVITY, KAPPA, P_REFERENCE
+from forcing.air import GRAVITY, KAPPA, P_REFERENCE, R_DRY, VIRTUAL
 from forcing.sounding import Profile
 
 
@@ -21,16 +21,16 @@ def column(
 ) -> Profile:
     """Profile through points (height m, theta K), with specific humidity and westerly wind at the same points.
 
-    The air is dry in the pressure: the Exner function falls by g dz / (cp theta).
+    Pressure is hydrostatic: the Exner function falls by KAPPA g dz / (R theta_v).
     """
     height = np.array([z for z, _ in points])
     theta = np.array([t for _, t in points])
     fine = np.unique(np.concatenate([np.arange(0.0, height[-1], 20.0), height]))
     th = np.interp(fine, height, theta)
-    step = GRAVITY * KAPPA / 287.05 * np.diff(fine) * 0.5 * (1.0 / th[1:] + 1.0 / th[:-1])
-    exner = (surface_pressure / P_REFERENCE) ** KAPPA - np.concatenate([[0.0], np.cumsum(step)])
-    assert abs(287.05 / KAPPA - CP_DRY) < 2.0
     moist = np.interp(fine, height, np.broadcast_to(humidity, height.shape))
+    light = 1.0 / (th * (1.0 + VIRTUAL * moist))
+    step = GRAVITY * KAPPA / R_DRY * np.diff(fine) * 0.5 * (light[1:] + light[:-1])
+    exner = (surface_pressure / P_REFERENCE) ** KAPPA - np.concatenate([[0.0], np.cumsum(step)])
     u = np.interp(fine, height, np.broadcast_to(0.0 if wind is None else wind, height.shape))
     return Profile(
         height=fine,
