@@ -5,8 +5,19 @@ from __future__ import annotations
 from typing import NamedTuple
 
 import numpy as np
+from numpy.typing import NDArray
 
-from forcing.air import GRAVITY, KAPPA, P_REFERENCE, R_DRY, each, potential_temperature, temperature, virtual
+from forcing.air import (
+    GRAVITY,
+    KAPPA,
+    P_REFERENCE,
+    R_DRY,
+    each,
+    potential_temperature,
+    saturation_humidity,
+    temperature,
+    virtual,
+)
 from forcing.errors import ProfileError
 from forcing.heights import humidity_of
 from forcing.levels import Levels, repair
@@ -16,6 +27,7 @@ SAME_GROUND = 30.0  # m, common practice: release platform, barometer and map di
 SURFACE_GAP_MAX = 500.0  # m, the deepest layer that is filled in below the lowest level
 THETA_DROP = 1.0  # K, Slonaker et al. 1996 (Weather and Forecasting 11, 350): a larger drop aloft is suspect
 SURFACE_LAYER_TOP = 300.0  # m, superadiabatic layers must start at the ground and below this to be taken as genuine
+SURFACE_EXCESS = 0.3  # K, rounding to 0.1 K and 1 hPa alone gives up to 0.2
 SURFACE_EXCESS_DOUBT = 10.0  # K, common practice: larger excess of the lowest level suggests a warm sensor
 JET_DOUBT = 110.0  # m s-1, common practice: stronger winds suggest knots read as m/s
 
@@ -32,7 +44,7 @@ class Column(NamedTuple):
     u: Array
     v: Array
 
-    def keep(self, chosen: Array) -> Column:
+    def keep(self, chosen: NDArray[np.bool_]) -> Column:
         """Keep the levels where the mask `chosen` is True."""
         return Column(*(values[chosen] for values in self))
 
@@ -125,6 +137,11 @@ def set_ground(
     return cut_below(column, elevation).above(elevation), elevation, done, (flag,)
 
 
+def _at_most_saturated(theta: Array, humidity: Array, pressure: Array) -> Array:
+    """Cap humidity: a straight line between two saturated levels runs above saturation."""
+    return np.minimum(humidity, each(saturation_humidity, each(temperature, theta, pressure), pressure))
+
+
 def place_wind_levels(column: Column, pressure: Array, u: Array, v: Array) -> tuple[Column, tuple[Repair, ...]]:
     """Put levels that have wind only into the column, at the height of their pressure, theta and humidity linear."""
     inside = np.isfinite(u) & np.isfinite(v) & (pressure < column.pressure[0]) & (pressure > column.pressure[-1])
@@ -136,7 +153,7 @@ def place_wind_levels(column: Column, pressure: Array, u: Array, v: Array) -> tu
     apart[1:] &= np.diff(z) > 0.5
     p, z = p[apart], z[apart]
     theta, q = (np.interp(z, column.height, values) for values in (column.theta, column.humidity))
-    added = Column(z, p, theta, q, u[inside][apart], v[inside][apart])
+    added = Column(z, p, theta, _at_most_saturated(theta, q, p), u[inside][apart], v[inside][apart])
     joined = Column(*(np.concatenate(pair) for pair in zip(column, added, strict=True)))
     order = np.argsort(joined.height, kind="stable")
     done = repair("wind-only level placed", int(apart.sum()), "temperature and humidity interpolated at its height")
@@ -168,7 +185,7 @@ def doubts(column: Column) -> tuple[Flag, ...]:
     while top < steps.size and steps[top] < 0.0 and z[top] < SURFACE_LAYER_TOP:
         top += 1
     excess = float(theta[0] - theta[top])
-    if excess > 0.1:
+    if excess > SURFACE_EXCESS:
         text = f"potential temperature falls {excess:.1f} K from the ground to {z[top]:.0f} m: kept as measured"
         flags += (Flag("superadiabatic surface layer", top, float(z[top]), text),)
     if excess > SURFACE_EXCESS_DOUBT:

@@ -204,7 +204,7 @@ def order_levels(levels: Levels) -> tuple[Levels, tuple[Repair, ...]]:
         done += repair("reversed order", n, "levels came from the top down: turned round")
     kept = _longest_fall(levels.pressure)
     lost = n - len(kept)
-    if lost > 0.5 * n:
+    if 3 * lost > n:
         first = int(np.flatnonzero(np.diff(levels.pressure) > 0.0)[0]) + 1
         raise ProfileError(
             f"pressure {levels.pressure[first] / 100:g} hPa does not fall with height, as at {lost} of {n} levels",

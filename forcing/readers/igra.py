@@ -136,7 +136,8 @@ def _record(lines: list[str], first: int, last: int, name: str) -> Sounding:
     if len(body) < declared:
         lost = declared - len(body)
         repairs += (Repair("record cut short", lost, f"header declares {declared} levels, {len(body)} are there"),)
-    rows, ground = [], None
+    rows: list[Row] = []
+    ground: int | None = None
     for line_number, line in body:
         row, is_ground = _level(line, line_number, name)
         if is_ground and ground is None:

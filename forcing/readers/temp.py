@@ -240,7 +240,7 @@ def _mandatory(part: Part) -> list[Row]:
     levels = MANDATORY_A if part.letter == "A" else MANDATORY_C
     last = LAST_WIND[part.letter].get(part.last, 9999 if part.last == "/" else 0)
     cursor, rows = _Cursor(part.groups), []
-    before = 9999.0
+    before = 0
     while cursor.peek():
         code, line = cursor.peek(), cursor.line()
         if code in SECTIONS:
@@ -254,9 +254,8 @@ def _mandatory(part: Part) -> list[Row]:
             pressure = _pressure(code[2:], part)
             air, flow = _air(cursor.take()), _flow(cursor.take(), part)
             rows.append(Row(line, pressure, NAN, *air, *flow))
-        elif head in levels and levels[head] < before and group is not None:
-            level = levels[head]
-            before = level
+        elif head in levels and levels[head] in _next(list(levels.values()), before) and group is not None:
+            level = before = levels[head]
             height = geopotential(code[2:], level) if code[2:].isdigit() else NAN
             air = _air(cursor.take())
             flow = _flow(cursor.take(), part) if level >= last else (NAN, NAN)
@@ -268,6 +267,14 @@ def _mandatory(part: Part) -> list[Row]:
                 remedy="correct or complete the groups before it",
             )
     return rows
+
+
+def _next(levels: list[int], before: int) -> list[int]:
+    """Levels that may follow `before` (any may be first); 925 hPa is lacking in older messages."""
+    if before == 0:
+        return levels
+    rest = levels[levels.index(before) + 1 :]
+    return rest[:2] if rest[:1] == [925] else rest[:1]
 
 
 def _special(cursor: _Cursor, part: Part) -> list[Row]:

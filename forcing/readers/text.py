@@ -6,11 +6,12 @@ import math
 from collections.abc import Iterable
 from dataclasses import dataclass, replace
 from datetime import datetime, timedelta
+from typing import NamedTuple
 
 import numpy as np
 
 from forcing.errors import ProfileError
-from forcing.sounding import Sounding
+from forcing.sounding import Array, Sounding
 
 WIDTH = timedelta(hours=3)  # a release belongs to an asked time within this
 NAN = float("nan")
@@ -91,10 +92,20 @@ def merge_rows(rows: Iterable[Row]) -> list[Row]:
     return levels
 
 
-def arrays(rows: list[Row]) -> tuple[np.ndarray[tuple[int], np.dtype[np.float64]], ...]:
-    """Columns of `Sounding`, in its order, from rows."""
-    names = ("pressure", "height", "temperature", "dewpoint", "wind_speed", "wind_from")
-    return tuple(np.array([getattr(row, name) for row in rows], dtype=np.float64) for name in names)
+class Columns(NamedTuple):
+    """The first fields of `Sounding`, in its order."""
+
+    pressure: Array
+    height: Array
+    temperature: Array
+    dewpoint: Array
+    wind_speed: Array
+    wind_from: Array
+
+
+def arrays(rows: list[Row]) -> Columns:
+    """Turn rows into columns, shape (n,) each."""
+    return Columns(*(np.array([getattr(row, name) for row in rows], dtype=np.float64) for name in Columns._fields))
 
 
 def choose(soundings: list[Sounding], valid: datetime | None, name: str) -> Sounding:
