@@ -29,7 +29,7 @@ class _Default(NamedTuple):
     value: str
     why: str
     step: str
-    stepped: float
+    stepped: float | None
 
 
 _SKY = (
@@ -85,6 +85,10 @@ _MOTION = (
         0.2,
     ),
 )
+#: A later profile holds what sinking and advection did until then, so there is no step to take beside it.
+_MOTION_IN_LATER = tuple(
+    one._replace(why="the later profile holds what it did until then", step="", stepped=None) for one in _MOTION
+)
 
 
 def list_assumptions(scenario: Scenario) -> tuple[Assumption, ...]:
@@ -94,7 +98,7 @@ def list_assumptions(scenario: Scenario) -> tuple[Assumption, ...]:
         *_surface(scenario),
         *_weather(scenario, _SKY),
         *_winds(scenario),
-        *_weather(scenario, _MOTION),
+        *_weather(scenario, _MOTION if scenario.later is None else _MOTION_IN_LATER),
         *_air_aloft(scenario),
         *_run(scenario),
     )
