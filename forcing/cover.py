@@ -40,7 +40,7 @@ class Cover:
     leaf_area: float  # m2 m-2 of the vegetated part
     stomatal_resistance_min: float  # s m-1
     stomatal_radiation: float  # W m-2
-    stomatal_humidity: float  # Pa-1
+    stomatal_slope: float  # kPa^0.5
     soil_conductivity_dry: float  # W m-1 K-1 at the wilting point
     soil_conductivity_wet: float  # W m-1 K-1 at field capacity
     soil_heat_capacity_dry: float  # J m-3 K-1
@@ -78,7 +78,7 @@ LIMITS: Mapping[str, tuple[float, float]] = {
     "leaf_area": (0.0, 12.0),
     "stomatal_resistance_min": (10.0, 2000.0),
     "stomatal_radiation": (1.0, 1000.0),
-    "stomatal_humidity": (0.0, 0.01),
+    "stomatal_slope": (0.0, 50.0),
     "soil_conductivity_dry": (0.02, 10.0),
     "soil_conductivity_wet": (0.02, 10.0),
     "soil_heat_capacity_dry": (5e4, 6e6),
@@ -109,7 +109,7 @@ def names() -> tuple[str, ...]:
 
 
 def _of(name: str, values: Mapping[str, float], parts: tuple[tuple[float, Cover], ...] = ()) -> Cover:
-    return Cover(name, **values, parts=parts)  # type: ignore[arg-type]
+    return Cover(name, **values, parts=parts)
 
 
 def _known(name: str) -> Cover:
@@ -204,7 +204,7 @@ def mixture(parts: Mapping[Cover, float]) -> Cover:
     values = {key: mean(key) for key in LIMITS}
     drag = math.fsum(share / math.log(BLENDING_HEIGHT / part.roughness_momentum) ** 2 for part, share in kept)
     values["roughness_momentum"] = BLENDING_HEIGHT * math.exp(-1.0 / math.sqrt(drag))
-    for key in ("leaf_area", "stomatal_resistance_min", "stomatal_radiation", "stomatal_humidity"):
+    for key in ("leaf_area", "stomatal_resistance_min", "stomatal_radiation", "stomatal_slope"):
         values[key] = mean(key, "vegetation_fraction")
     name = " + ".join(f"{share:.0%} {part.name}" for part, share in kept)
     return _of(name, values, tuple((share, part) for part, share in kept))
@@ -244,7 +244,7 @@ def ground(what: Cover, soil_moisture: float) -> Ground:
         anthropogenic_heat=what.anthropogenic_heat,
         snow=1.0 if what.snow >= 0.5 else 0.0,
         stomatal_radiation=what.stomatal_radiation,
-        stomatal_humidity=what.stomatal_humidity,
+        stomatal_slope=what.stomatal_slope,
         bare_fraction=bare,
         bare_resistance=1.0 if what.snow >= 0.5 else min(NO_EVAPORATION, soil_resistance(moisture)),
     )

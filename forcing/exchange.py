@@ -24,6 +24,7 @@ from forcing.speed import kernel
 from forcing.transfer import CALM_WIND, GUSTINESS, ZETA_MAX, Geometry, friction_for
 
 STOMATA_MAX = 5000.0  # s m-1, Noilhan & Planton 1989 (Mon. Weather Rev. 117, 536)
+DEFICIT_MIN = 200.0  # Pa, common practice
 NO_EVAPORATION = 1e9  # s m-1, stands for a surface without water
 
 
@@ -46,7 +47,7 @@ class Ground(NamedTuple):
     anthropogenic_heat: float  # W m-2, mean of the day
     snow: float  # 1: snow on the ground
     stomatal_radiation: float  # W m-2 of sunlight that opens the stomata half way or so
-    stomatal_humidity: float  # Pa-1, how fast dry air closes the stomata
+    stomatal_slope: float  # kPa^0.5, how much dry air closes the stomata (less slope, more closing)
     bare_fraction: float  # share of soil or snow open to the air
     bare_resistance: float  # s m-1 of that soil to vapour
 
@@ -84,7 +85,7 @@ def surface_resistance(
     """Resistance [s m-1] of stomata and soil in parallel to the loss of vapour.
 
     Stomata: factors of radiation, temperature and soil moisture of Noilhan & Planton 1989 (Eqs 34 to 37, after Jarvis 1976),
-    and an exponential factor of the vapour pressure deficit.
+    and the optimal response to the vapour pressure deficit of Medlyn et al. 2011 (Glob. Change Biol. 17, 2134).
     """
     conductance = 0.0
     if ground.vegetation_fraction > 0.0 and ground.leaf_area > 0.0:
@@ -95,8 +96,10 @@ def surface_resistance(
         off = 298.0 - air_temperature
         warmth = max(0.02, 1.0 - 0.0016 * off * off)
         deficit = max(0.0, saturation_vapour_pressure(air_temperature) - vapour_pressure(humidity, pressure))
-        drought = math.exp(-ground.stomatal_humidity * deficit)
-        opening = max(radiation * water * warmth * drought, lowest / STOMATA_MAX)
+        slope = ground.stomatal_slope
+        # relative to 1 kPa, the deficit at which the resistances of the table are meant; leaf air is never quite saturated
+        dryness = (1.0 + slope / math.sqrt(max(deficit, DEFICIT_MIN) / 1000.0)) / (1.0 + slope)
+        opening = max(radiation * water * warmth * dryness, lowest / STOMATA_MAX)
         conductance = ground.vegetation_fraction * ground.leaf_area * opening / lowest
     conductance += ground.bare_fraction / max(ground.bare_resistance, 1e-3)
     if conductance < 1.0 / NO_EVAPORATION:
