@@ -65,17 +65,3 @@ def diffusivity(
         length_squared * (0.5 * f - richardson * slope) / shear,
     )
 
-
-@kernel
-def bulk_function(closure: int, richardson: float, unstable_factor: float) -> tuple[float, float]:
-    """f and df/dRi_b of the lowest half cell for the bulk Richardson number between skin and air.
-
-    Stable: for phi = 1 + 5 z/L and equal roughness lengths the bulk relation is exactly (1 - 5 Ri_b)^2, so `short` uses
-    its own local form; `blend` uses its form at the ground. Unstable: 1 - 10 Ri_b / (1 + c |Ri_b|^(1/2)) with
-    ``unstable_factor`` c (Louis 1979, with the slope 10 of the stable side).
-    """
-    if richardson >= 0.0:
-        return stable_function(closure, 1.0, richardson)
-    root = math.sqrt(-richardson)
-    lower = 1.0 + unstable_factor * root
-    return 1.0 - 10.0 * richardson / lower, -10.0 / lower + 5.0 * unstable_factor * root / (lower * lower)

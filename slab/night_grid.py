@@ -42,6 +42,8 @@ class Grid(NamedTuple):
     inverse_spacing : (n - 1,) 1 / distance of the two centres, m-1.
     length_squared : (n - 1,) mixing length squared, m2.
     tail : (n - 1,) share of the long tail in the closure `blend`.
+    moist : kelvin of buoyancy per unit of humidity, 0.608 x the lowest theta at the start, K. One number for the column, so
+        that theta + moist x humidity and humidity are the two quantities that the solver has to carry.
     """
 
     height: Numbers
@@ -53,6 +55,7 @@ class Grid(NamedTuple):
     inverse_spacing: Numbers
     length_squared: Numbers
     tail: Numbers
+    moist: float
 
 
 class Column(NamedTuple):
@@ -118,7 +121,8 @@ def build_grid(
     """Geometry and masses for cells between `edges` [m] holding `theta` [K] and `humidity` [kg/kg].
 
     `constant_density` [kg m-3] replaces the hydrostatic masses (test cases that prescribe one density).
-    The mixing length is l = k z / (1 + k z / 40 m) (Blackadar 1962), z counted from the displacement height.
+    The mixing length is l = k z / (1 + k z / 40 m) (Blackadar 1962); z counts from the displacement height and is the
+    logarithmic mean of the two cells.
     """
     thickness = np.diff(edges)
     centre = 0.5 * (edges[1:] + edges[:-1])
@@ -129,7 +133,8 @@ def build_grid(
         mass = constant_density * thickness
     inner = edges[1:-1]
     rho = mass / thickness
-    wall = KARMAN * (inner + roughness)
+    above = centre + roughness
+    wall = KARMAN * np.diff(centre) / np.log(above[1:] / above[:-1])  # this mean of z makes a neutral log wind exact
     return Grid(
         height=numbers(centre),
         thickness=numbers(thickness),
@@ -140,6 +145,7 @@ def build_grid(
         inverse_spacing=numbers(1.0 / np.diff(centre)),
         length_squared=numbers((wall / (1.0 + wall / FREE_LENGTH)) ** 2),
         tail=numbers(np.maximum(0.0, 1.0 - inner / TAIL_DEPTH)),
+        moist=VIRTUAL * float(theta[0]),
     )
 
 

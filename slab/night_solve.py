@@ -1,11 +1,13 @@
 """Direct solution of (I - g h J) x = r for the night column.
 
-J has 3 x 3 blocks for (theta, u, v) on three diagonals, a scalar tridiagonal for humidity and one for the soil. Freezing
-the diffusivities instead would be first order only and 1 K wrong at 60 s: the diffusivity of a perturbation is the
-derivative of the flux by the coupled gradients. Soil and humidity are eliminated toward the surface, the skin into the
-lowest block, the blocks from the top down; fluxes appear in both neighbours' rows alike, so that heat, water and
-momentum are conserved to round-off. Left out of J: dK/d(humidity) and dK by humidity; the stepping keeps its order with
-an inexact Jacobian.
+J couples buoyancy b = theta + moist x humidity, u and v by 3 x 3 blocks on three diagonals (K depends on their gradients);
+humidity is carried along: K moves it, but it acts on K through b only. Freezing the diffusivities instead would be first
+order and 1 K wrong at 60 s: the diffusivity of a perturbation is the derivative of the flux by the coupled gradients. Leaving
+out humidity's part in K costs hundreds of rejected steps in near-neutral residual layers.
+
+Blocks are eliminated from the top down, soil from the bottom up; skin, humidity, buoyancy and wind of the lowest cell remain
+as five equations. Fluxes appear alike in both neighbours' rows, so heat, water and momentum are conserved to round-off. Left
+out: the change of theta in g / theta, and of the latent heat with temperature.
 """
 
 from __future__ import annotations
@@ -30,47 +32,19 @@ def _factor_soil(boundary: int, gh: float, foot: Footing, soil: Soil, work: Work
 
 
 @kernel
-def _factor_vapour(gh: float, mass: Numbers, ground: Link, work: Work) -> None:
-    pivot, transfer, exchange = work.vapour_pivot, work.vapour_transfer, work.exchange
-    above = 0.0
-    for i in range(len(mass) - 1, 0, -1):
-        e = gh * exchange[i - 1]
-        pivot[i] = mass[i] + above + e
-        transfer[i] = e / pivot[i]
-        above = e * (1.0 - transfer[i])
-    pivot[0] = mass[0] + above - gh * ground.vapour_q
-
-
-@kernel
-def _close_skin(method: Method, gh: float, foot: Footing, ground: Link, work: Work) -> None:
-    """How the skin follows the lowest cell: x_skin = p + closing[1..3] . (theta, u, v), with pivot closing[0]."""
-    closing = work.closing
-    for k in range(8):
-        closing[k] = 0.0
-    if method.boundary == TEMPERATURE:
-        closing[0] = 1.0
-    elif method.boundary == FLUX:
-        closing[0] = 1.0 + gh * ground.lost / foot.skin_capacity
-    else:
-        heat = CP_DRY * foot.exner
-        vapour = ground.latent_heat * (1.0 + gh * ground.vapour_q / work.vapour_pivot[0])
-        conduction = foot.skin_conductance * (1.0 - work.soil_transfer[0])
-        pivot = foot.skin_capacity + gh * (ground.lost + heat * ground.heat_s + vapour * ground.vapour_s + conduction)
-        closing[0] = pivot
-        closing[1] = -gh * (heat * ground.heat_t + vapour * ground.vapour_t) / pivot
-        closing[2] = -gh * (heat * ground.heat_u + vapour * ground.vapour_u) / pivot
-        closing[3] = -gh * (heat * ground.heat_v + vapour * ground.vapour_v) / pivot
-
-
-@kernel
 def _factor_air(gh: float, coriolis: float, grid: Grid, work: Work) -> tuple[float, ...]:
-    """Eliminate the blocks from the top to cell 1; returns what cell 0 receives from above (nine numbers)."""
+    """Eliminate the blocks from the top to cell 1.
+
+    Returns what cell 0 receives from above: nine numbers of the block, humidity's pivot, its row against the block.
+    """
     mass, exchange = grid.mass, work.exchange
-    ga, gb, gc = work.gradient
+    ga, gb, gc, gq = work.gradient
     ka, kb, kc = work.gain
     p0, p1, p2, p3, p4, p5, p6, p7, p8 = work.inverse
     t0, t1, t2, t3, t4, t5, t6, t7, t8 = work.transfer
+    pivot, carried, n0, n1, n2, row0, row1, row2 = work.vapour
     turn = gh * coriolis
+    above = r0 = r1 = r2 = 0.0
     d0 = d1 = d2 = d3 = d4 = d5 = d6 = d7 = d8 = 0.0
     for i in range(len(mass) - 1, 0, -1):
         j = i - 1
@@ -122,6 +96,15 @@ def _factor_air(gh: float, coriolis: float, grid: Grid, work: Work) -> tuple[flo
         p6[i] = i6
         p7[i] = i7
         p8[i] = i8
+        q = gh * gq[j]
+        r0 += q * x
+        r1 += q * y
+        r2 += q * z
+        row0[i] = r0
+        row1[i] = r1
+        row2[i] = r2
+        wet = m + above + e
+        pivot[i] = wet
         # inverse times block: the block is e I + (a, b, c) (x, y, z)^T
         f0 = i0 * a + i1 * b + i2 * c
         f1 = i3 * a + i4 * b + i5 * c
@@ -144,6 +127,15 @@ def _factor_air(gh: float, coriolis: float, grid: Grid, work: Work) -> tuple[flo
         t6[i] = w6
         t7[i] = w7
         t8[i] = w8
+        # humidity of this cell by that of the cell below and by its block
+        l0 = (q * x - r0 * w0 - r1 * w3 - r2 * w6) / wet
+        l1 = (q * y - r0 * w1 - r1 * w4 - r2 * w7) / wet
+        l2 = (q * z - r0 * w2 - r1 * w5 - r2 * w8) / wet
+        n0[i] = l0
+        n1[i] = l1
+        n2[i] = l2
+        carried[i] = e / wet
+        above = e * (1.0 - e / wet)
         # block times (I - transfer)
         h0 = x - (x * w0 + y * w3 + z * w6)
         h1 = y - (x * w1 + y * w4 + z * w7)
@@ -157,43 +149,82 @@ def _factor_air(gh: float, coriolis: float, grid: Grid, work: Work) -> tuple[flo
         d6 = c * h0 - e * w6
         d7 = c * h1 - e * w7
         d8 = e * (1.0 - w8) + c * h2
-    return d0, d1, d2, d3, d4, d5, d6, d7, d8
+        r0 = q * h0 - e * l0
+        r1 = q * h1 - e * l1
+        r2 = q * h2 - e * l2
+    return d0, d1, d2, d3, d4, d5, d6, d7, d8, above, r0, r1, r2
 
 
 @kernel
-def _factor_lowest(
-    gh: float, coriolis: float, mass: float, ground: Link, u: float, v: float, above: tuple[float, ...], work: Work
-) -> None:
-    """Invert the lowest block, the skin having been eliminated into it."""
-    _, pt, pu, pv = work.closing[0], work.closing[1], work.closing[2], work.closing[3]
-    b0, b1, b2, b3, b4, b5, b6, b7, b8 = above
+def _fill_corner(
+    method: Method, gh: float, coriolis: float, grid: Grid, foot: Footing, ground: Link, state: Column,
+    above: tuple[float, ...], work: Work,
+) -> None:  # fmt: skip
+    """Matrix of the lowest cell for (skin, humidity, buoyancy, u, v), row by row, and its triangular factors in place."""
+    w = work.corner
+    u = state.u[0]
+    v = state.v[0]
+    mass = grid.mass[0]
+    moist = grid.moist
     turn = gh * coriolis * mass
-    b0 += mass - gh * (ground.heat_t + ground.heat_s * pt)
-    b1 -= gh * (ground.heat_u + ground.heat_s * pu)
-    b2 -= gh * (ground.heat_v + ground.heat_s * pv)
-    drag_t = gh * (ground.drag_t + ground.drag_s * pt)
-    drag_u = gh * (ground.drag_u + ground.drag_s * pu)
-    drag_v = gh * (ground.drag_v + ground.drag_s * pv)
-    b3 += u * drag_t
-    b4 += mass + gh * ground.drag + u * drag_u
-    b5 += u * drag_v - turn
-    b6 += v * drag_t
-    b7 += v * drag_u + turn
-    b8 += mass + gh * ground.drag + v * drag_v
-    c0 = b4 * b8 - b5 * b7
-    c1 = b5 * b6 - b3 * b8
-    c2 = b3 * b7 - b4 * b6
-    r = 1.0 / (b0 * c0 + b1 * c1 + b2 * c2)
-    p = work.inverse
-    p[0][0] = c0 * r
-    p[1][0] = (b2 * b7 - b1 * b8) * r
-    p[2][0] = (b1 * b5 - b2 * b4) * r
-    p[3][0] = c1 * r
-    p[4][0] = (b0 * b8 - b2 * b6) * r
-    p[5][0] = (b2 * b3 - b0 * b5) * r
-    p[6][0] = c2 * r
-    p[7][0] = (b1 * b6 - b0 * b7) * r
-    p[8][0] = (b0 * b4 - b1 * b3) * r
+    for k in range(25):
+        w[k] = 0.0
+    if method.boundary == ENERGY:
+        heat = CP_DRY * foot.exner
+        latent = ground.latent_heat
+        conduction = foot.skin_conductance * (1.0 - work.soil_transfer[0])
+        by_theta = heat * ground.heat_t + latent * ground.vapour_t
+        w[0] = foot.skin_capacity + gh * (
+            ground.lost + heat * ground.heat_s + latent * ground.vapour_s + conduction
+        )
+        w[1] = gh * (latent * ground.vapour_q - moist * by_theta)
+        w[2] = gh * by_theta
+        w[3] = gh * (heat * ground.heat_u + latent * ground.vapour_u)
+        w[4] = gh * (heat * ground.heat_v + latent * ground.vapour_v)
+    elif method.boundary == TEMPERATURE:
+        w[0] = 1.0
+    else:
+        w[0] = 1.0 + gh * ground.lost / foot.skin_capacity
+    d0, d1, d2, d3, d4, d5, d6, d7, d8, wet, r0, r1, r2 = above
+    w[5] = -gh * ground.vapour_s
+    w[6] = mass + wet - gh * (ground.vapour_q - moist * ground.vapour_t)
+    w[7] = r0 - gh * ground.vapour_t
+    w[8] = r1 - gh * ground.vapour_u
+    w[9] = r2 - gh * ground.vapour_v
+    by_theta = ground.heat_t + moist * ground.vapour_t
+    w[10] = -gh * (ground.heat_s + moist * ground.vapour_s)
+    w[11] = -gh * moist * (ground.vapour_q - by_theta)
+    w[12] = mass + d0 - gh * by_theta
+    w[13] = d1 - gh * (ground.heat_u + moist * ground.vapour_u)
+    w[14] = d2 - gh * (ground.heat_v + moist * ground.vapour_v)
+    w[15] = gh * u * ground.drag_s
+    w[16] = -gh * u * ground.drag_t * moist
+    w[17] = d3 + gh * u * ground.drag_t
+    w[18] = mass + d4 + gh * (ground.drag + u * ground.drag_u)
+    w[19] = d5 + gh * u * ground.drag_v - turn
+    w[20] = gh * v * ground.drag_s
+    w[21] = -gh * v * ground.drag_t * moist
+    w[22] = d6 + gh * v * ground.drag_t
+    w[23] = d7 + gh * v * ground.drag_u + turn
+    w[24] = mass + d8 + gh * (ground.drag + v * ground.drag_v)
+    for k in range(4):
+        for i in range(k + 1, 5):
+            share = w[5 * i + k] / w[6 * k]
+            w[5 * i + k] = share
+            for j in range(k + 1, 5):
+                w[5 * i + j] -= share * w[5 * k + j]
+
+
+@kernel
+def _solve_corner(w: Numbers, side: Numbers) -> None:
+    """Solve the five equations in place."""
+    for i in range(1, 5):
+        for k in range(i):
+            side[i] -= w[5 * i + k] * side[k]
+    for i in range(4, -1, -1):
+        for k in range(i + 1, 5):
+            side[i] -= w[5 * i + k] * side[k]
+        side[i] /= w[6 * i]
 
 
 @kernel
@@ -203,69 +234,76 @@ def factor(
 ) -> None:  # fmt: skip
     """Factor I - g h J at ``state``, whose slopes `right_side` left in ``work``."""
     _factor_soil(method.boundary, gh, foot, soil, work)
-    _factor_vapour(gh, grid.mass, ground, work)
-    _close_skin(method, gh, foot, ground, work)
     above = _factor_air(gh, coriolis, grid, work)
-    _factor_lowest(gh, coriolis, grid.mass[0], ground, state.u[0], state.v[0], above, work)
+    _fill_corner(method, gh, coriolis, grid, foot, ground, state, above, work)
 
 
 @kernel
-def _down(gh: float, grid: Grid, rates: Column, work: Work) -> tuple[float, float, float, float]:
-    """Forward elimination of a right side from the top to cell 1; returns what cell 0 receives (theta, u, v, q)."""
+def _down(gh: float, grid: Grid, rates: Column, work: Work) -> None:
+    """Forward elimination of a right side from the top to cell 1; what cell 0 receives goes to the corner's side."""
     mass, exchange = grid.mass, work.exchange
-    ga, gb, gc = work.gradient
+    ga, gb, gc, gq = work.gradient
     ka, kb, kc = work.gain
     p0, p1, p2, p3, p4, p5, p6, p7, p8 = work.inverse
-    st, su, sv = work.partial
-    sq, pivot = work.vapour_partial, work.vapour_pivot
+    sb, su, sv, sq = work.partial
+    pivot, _, _, _, _, row0, row1, row2 = work.vapour
     rt, ru, rv, rq = rates.theta, rates.u, rates.v, rates.humidity
-    yt = yu = yv = yq = 0.0
+    moist = grid.moist
+    yb = yu = yv = yq = 0.0
     for i in range(len(mass) - 1, 0, -1):
         m = mass[i]
-        yt += m * rt[i]
+        q = rq[i]
+        yb += m * (rt[i] + moist * q)
         yu += m * ru[i]
         yv += m * rv[i]
-        a = p0[i] * yt + p1[i] * yu + p2[i] * yv
-        b = p3[i] * yt + p4[i] * yu + p5[i] * yv
-        c = p6[i] * yt + p7[i] * yu + p8[i] * yv
-        q = (m * rq[i] + yq) / pivot[i]
-        st[i] = a
+        a = p0[i] * yb + p1[i] * yu + p2[i] * yv
+        b = p3[i] * yb + p4[i] * yu + p5[i] * yv
+        c = p6[i] * yb + p7[i] * yu + p8[i] * yv
+        q = (m * q + yq - row0[i] * a - row1[i] * b - row2[i] * c) / pivot[i]
+        sb[i] = a
         su[i] = b
         sv[i] = c
         sq[i] = q
         j = i - 1
         e = gh * exchange[j]
         s = gh * (ka[j] * a + kb[j] * b + kc[j] * c)
-        yt = e * a + ga[j] * s
+        yb = e * a + ga[j] * s
         yu = e * b + gb[j] * s
         yv = e * c + gc[j] * s
-        yq = e * q
-    return yt, yu, yv, yq
+        yq = e * q + gq[j] * s
+    m = mass[0]
+    side = work.corner_side
+    side[1] = m * rq[0] + yq
+    side[2] = m * (rt[0] + moist * rq[0]) + yb
+    side[3] = m * ru[0] + yu
+    side[4] = m * rv[0] + yv
 
 
 @kernel
-def _up(work: Work, out: Column) -> None:
+def _up(grid: Grid, work: Work, out: Column) -> None:
     """Back substitution from cell 0 upward, and from the skin into the soil."""
     t0, t1, t2, t3, t4, t5, t6, t7, t8 = work.transfer
-    st, su, sv = work.partial
-    sq, tq = work.vapour_partial, work.vapour_transfer
+    sb, su, sv, sq = work.partial
+    _, carried, n0, n1, n2, _, _, _ = work.vapour
     xt, xu, xv, xq = out.theta, out.u, out.v, out.humidity
-    a = xt[0]
-    b = xu[0]
-    c = xv[0]
-    q = xq[0]
+    moist = grid.moist
+    x, q, a, b, c = work.corner_side
+    out.skin[0] = x
+    xt[0] = a - moist * q
+    xu[0] = b
+    xv[0] = c
+    xq[0] = q
     for i in range(1, len(xt)):
-        at = st[i] + t0[i] * a + t1[i] * b + t2[i] * c
+        q = sq[i] + carried[i] * q + n0[i] * a + n1[i] * b + n2[i] * c
+        at = sb[i] + t0[i] * a + t1[i] * b + t2[i] * c
         bt = su[i] + t3[i] * a + t4[i] * b + t5[i] * c
         c = sv[i] + t6[i] * a + t7[i] * b + t8[i] * c
         a = at
         b = bt
-        q = sq[i] + tq[i] * q
-        xt[i] = a
+        xt[i] = a - moist * q
         xu[i] = b
         xv[i] = c
         xq[i] = q
-    x = out.skin[0]
     for j in range(len(out.soil)):
         x = work.soil_partial[j] + work.soil_transfer[j] * x
         out.soil[j] = x
@@ -285,34 +323,14 @@ def _soil_down(gh: float, soil: Soil, rates: Column, work: Work) -> float:
 
 @kernel
 def solve(
-    method: Method, gh: float, grid: Grid, foot: Footing, soil: Soil, ground: Link, state: Column, rates: Column,
-    work: Work, out: Column,
-) -> None:  # fmt: skip
-    """x in (I - g h J) x = ``rates``, into ``out``."""
+    method: Method, gh: float, grid: Grid, foot: Footing, soil: Soil, rates: Column, work: Work, out: Column
+) -> None:
+    """x in (I - g h J) x = ``rates``, into ``out`` (which may be ``rates``)."""
     top_soil = _soil_down(gh, soil, rates, work)
-    yt, yu, yv, yq = _down(gh, grid, rates, work)
-    m = grid.mass[0]
-    sq = (m * rates.humidity[0] + yq) / work.vapour_pivot[0]
-    closing = work.closing
-    skin = rates.skin[0] / closing[0]
+    _down(gh, grid, rates, work)
+    skin = rates.skin[0]
     if method.boundary == ENERGY:
-        skin = foot.skin_capacity * rates.skin[0] + gh * (
-            foot.skin_conductance * top_soil - ground.latent_heat * ground.vapour_q * sq
-        )
-        skin /= closing[0]
-    yt += m * rates.theta[0] + gh * ground.heat_s * skin
-    push = gh * ground.drag_s * skin
-    yu += m * rates.u[0] - push * state.u[0]
-    yv += m * rates.v[0] - push * state.v[0]
-    p = work.inverse
-    a = p[0][0] * yt + p[1][0] * yu + p[2][0] * yv
-    b = p[3][0] * yt + p[4][0] * yu + p[5][0] * yv
-    c = p[6][0] * yt + p[7][0] * yu + p[8][0] * yv
-    skin += closing[1] * a + closing[2] * b + closing[3] * c
-    moved = ground.vapour_s * skin + ground.vapour_t * a + ground.vapour_u * b + ground.vapour_v * c
-    out.theta[0] = a
-    out.u[0] = b
-    out.v[0] = c
-    out.humidity[0] = sq + gh * moved / work.vapour_pivot[0]
-    out.skin[0] = skin
-    _up(work, out)
+        skin = foot.skin_capacity * skin + gh * foot.skin_conductance * top_soil
+    work.corner_side[0] = skin
+    _solve_corner(work.corner, work.corner_side)
+    _up(grid, work, out)

@@ -181,11 +181,11 @@ def advance(
         while True:
             gh = GAMMA * h
             factor(method, gh, outside.coriolis, grid, foot, soil, ground, state, work)
-            solve(method, gh, grid, foot, soil, ground, state, work.rates, work, work.first)
+            solve(method, gh, grid, foot, soil, work.rates, work, work.first)
             _trial(state, h, work.first, work.trial)
             there = right_side(method, grid, foot, soil, drive, outside, work.trial, work.second, work, False)
             _less_twice(work.second, work.first)
-            solve(method, gh, grid, foot, soil, ground, state, work.second, work, work.second)
+            solve(method, gh, grid, foot, soil, work.second, work, work.second)
             error = _error(method, h, work.first, work.second)
             if error <= 1.0 or (error > 1.0 and h <= method.least_step):
                 break

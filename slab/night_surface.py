@@ -1,7 +1,7 @@
 """The ground under the night column: transfer through the lowest half cell, skin heat balance, and their derivatives.
 
-The transfer coefficients depend on the bulk Richardson number between skin and lowest cell in closed form, so that the
-implicit solver has exact derivatives. With the closure's own f they agree with similarity functions phi = 1 + 5 z/L.
+The transfer coefficients follow from the closure's own similarity profiles (`slab.night_bulk`), with the derivatives the
+implicit solver needs.
 Heat and vapour fluxes are positive upward, the ground flux positive into the soil.
 """
 
@@ -25,7 +25,7 @@ from forcing.air import (
 )
 
 from forcing.speed import kernel
-from slab.night_closure import bulk_function
+from slab.night_bulk import bulk
 
 ENERGY = 0
 TEMPERATURE = 1
@@ -46,7 +46,8 @@ class Footing(NamedTuple):
     Attributes
     ----------
     height : centre of the lowest cell above displacement + roughness length, m.
-    momentum, heat : neutral transfer coefficients of that half cell, k^2 / ln^2 (1).
+    log_momentum, log_heat : ln(z / z0) of that half cell (1).
+    momentum, heat : its neutral transfer coefficients, k^2 / ln^2 (1).
     unstable_factor : c of the unstable bulk function (1).
     emissivity : long-wave emissivity of the skin, times its view of the sky (1).
     skin_capacity : J m-2 K-1.
@@ -58,6 +59,8 @@ class Footing(NamedTuple):
     """
 
     height: float
+    log_momentum: float
+    log_heat: float
     momentum: float
     heat: float
     unstable_factor: float
@@ -126,16 +129,32 @@ def neutral_logs(height: float, roughness_momentum: float, roughness_heat: float
     return math.log(above / roughness_momentum), math.log(above / roughness_heat)
 
 
+class Transfer(NamedTuple):
+    """X = U f [m s-1] of momentum and heat, and derivatives by theta_air - theta_skin and by U^2."""
+
+    momentum: float
+    momentum_delta: float
+    momentum_squared: float
+    heat: float
+    heat_delta: float
+    heat_squared: float
+
+
 @kernel
-def _transfer(
-    closure: int, foot: Footing, delta: float, theta: float, wind_squared: float
-) -> tuple[float, float, float]:
-    """X = U f(Ri_b) [m s-1], dX/d(theta_air - theta_skin) and dX/dU^2."""
+def transfer(closure: int, foot: Footing, delta: float, theta: float, wind_squared: float) -> Transfer:
+    """Transfer velocities through the lowest half cell for ``delta`` = theta of the air less that of the skin [K]."""
     wind = math.sqrt(wind_squared)
     per_kelvin = GRAVITY * foot.height / (theta * wind_squared)
     richardson = per_kelvin * delta
-    f, slope = bulk_function(closure, richardson, foot.unstable_factor)
-    return wind * f, wind * slope * per_kelvin, (0.5 * f - slope * richardson) / wind
+    f = bulk(closure, richardson, foot.log_momentum, foot.log_heat, foot.unstable_factor)
+    return Transfer(
+        wind * f.momentum,
+        wind * f.momentum_slope * per_kelvin,
+        (0.5 * f.momentum - f.momentum_slope * richardson) / wind,
+        wind * f.heat,
+        wind * f.heat_slope * per_kelvin,
+        (0.5 * f.heat - f.heat_slope * richardson) / wind,
+    )
 
 
 @kernel
@@ -171,10 +190,13 @@ def link(
     """Fluxes between skin, lowest cell and first soil layer, with all derivatives."""
     delta = theta - skin / foot.exner
     squared = u * u + v * v + LEAST_WIND * LEAST_WIND
-    x, x_delta, x_squared = _transfer(closure, foot, delta, theta, squared)
+    y, y_delta, y_squared, x, x_delta, x_squared = transfer(closure, foot, delta, theta, squared)
     x_u = 2.0 * u * x_squared
     x_v = 2.0 * v * x_squared
     x_s = -x_delta / foot.exner
+    y_u = 2.0 * u * y_squared
+    y_v = 2.0 * v * y_squared
+    y_s = -y_delta / foot.exner
     drag = foot.density * foot.momentum
     heat = foot.density * foot.heat
     emitted = foot.emissivity * STEFAN_BOLTZMANN * skin * skin * skin
@@ -188,7 +210,7 @@ def link(
     if boundary == FLUX:
         return Link(
             drive.sensible / (CP_DRY * foot.exner), 0.0, 0.0, 0.0, 0.0, drive.latent / lv, 0.0, 0.0, 0.0, 0.0, 0.0,
-            drag * x, drag * x_s, drag * x_delta, drag * x_u, drag * x_v,
+            drag * y, drag * y_s, drag * y_delta, drag * y_u, drag * y_v,
             CP_DRY * foot.exner * heat * x * delta, FLUX_RELAXATION * (skin - theta * foot.exner),
             heat * CP_DRY * x + FLUX_RELAXATION, lv,
         )  # fmt: skip
@@ -205,11 +227,11 @@ def link(
         vapour_x * x_u,
         vapour_x * x_v,
         vapour_q,
-        drag * x,
-        drag * x_s,
-        drag * x_delta,
-        drag * x_u,
-        drag * x_v,
+        drag * y,
+        drag * y_s,
+        drag * y_delta,
+        drag * y_u,
+        drag * y_v,
         net,
         ground,
         lost,
@@ -228,6 +250,6 @@ def footing(
     # Louis (1979), coefficient 5.3 of heat, used for momentum too
     factor = 5.3 * heat * 10.0 * math.sqrt((height + roughness_momentum) / roughness_momentum)
     return Footing(
-        height, (KARMAN / log_m) ** 2, heat, factor, emissivity, skin_capacity, skin_conductance, soil_conductivity,
+        height, log_m, log_h, (KARMAN / log_m) ** 2, heat, factor, emissivity, skin_capacity, skin_conductance, soil_conductivity,
         soil_capacity, pressure, exner, pressure / (R_DRY * temperature), snow,
     )  # fmt: skip

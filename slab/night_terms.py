@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from typing import NamedTuple
 
-from forcing.air import CP_DRY, GRAVITY, VIRTUAL
+from forcing.air import CP_DRY, GRAVITY
 from forcing.speed import kernel
 from slab.night_closure import LEAST_SHEAR_SQUARED, diffusivity
 from slab.night_grid import Column, Grid, Numbers, numbers
@@ -55,10 +55,11 @@ class Work(NamedTuple):
     """Preallocated sequences of the stepping kernel; nothing in them outlives a step.
 
     ``rates``, ``first``, ``second`` : right side and the two stages; ``trial`` : the state between the stages.
-    ``exchange`` (n - 1,) density K / spacing [kg m-2 s-1] (``trial_exchange``: of the trial state); ``gradient`` and ``gain`` (3 x n - 1): flux derivative at an
-    interface is exchange I + gradient gain^T, the rank-one part being dK. ``inverse``, ``transfer`` (9 x n): blocks of the
-    elimination; ``partial`` (3 x n); ``vapour_pivot``, ``vapour_transfer``, ``vapour_partial`` (n,); ``soil_*`` (m,);
-    ``closing`` (8,): how the skin follows the lowest cell.
+    ``exchange`` (n - 1,) density K / spacing [kg m-2 s-1] (``trial_exchange``: of the trial state); ``gradient`` (4 x n - 1, of
+    buoyancy, u, v, humidity) and ``gain`` (3 x n - 1): the derivative of an interface's flux is exchange I + gradient gain^T, the
+    rank-one part being dK. ``inverse``, ``transfer`` (9 x n): blocks of the elimination; ``partial`` (4 x n); ``vapour`` (5 x n):
+    humidity's pivot, transfer and row against the block; ``soil_pivot``, ``soil_transfer``, ``soil_partial`` (m,); ``corner`` (25,):
+    skin, humidity and block of the lowest cell; ``corner_side`` (5,).
     """
 
     rates: Column
@@ -67,18 +68,17 @@ class Work(NamedTuple):
     trial: Column
     exchange: Numbers
     trial_exchange: Numbers
-    gradient: tuple[Numbers, Numbers, Numbers]
+    gradient: tuple[Numbers, Numbers, Numbers, Numbers]
     gain: tuple[Numbers, Numbers, Numbers]
     inverse: tuple[Numbers, Numbers, Numbers, Numbers, Numbers, Numbers, Numbers, Numbers, Numbers]
     transfer: tuple[Numbers, Numbers, Numbers, Numbers, Numbers, Numbers, Numbers, Numbers, Numbers]
-    partial: tuple[Numbers, Numbers, Numbers]
-    vapour_pivot: Numbers
-    vapour_transfer: Numbers
-    vapour_partial: Numbers
+    partial: tuple[Numbers, Numbers, Numbers, Numbers]
+    vapour: tuple[Numbers, Numbers, Numbers, Numbers, Numbers, Numbers, Numbers, Numbers]
     soil_pivot: Numbers
     soil_transfer: Numbers
     soil_partial: Numbers
-    closing: Numbers
+    corner: Numbers
+    corner_side: Numbers
 
 
 def make_work(levels: int, layers: int) -> Work:
@@ -93,13 +93,12 @@ def make_work(levels: int, layers: int) -> Work:
     def state() -> Column:
         return Column(air(), air(), air(), air(), ground(), numbers([0.0]))
 
-    def nine() -> tuple[Numbers, ...]:
-        return tuple(air() for _ in range(9))
+    def many(count: int) -> tuple[Numbers, ...]:
+        return tuple(air() for _ in range(count))
 
-    three = tuple(air() for _ in range(9))
     return Work(
-        state(), state(), state(), state(), air(), air(), three[0:3], three[3:6], nine(), nine(), three[6:9],  # type: ignore[arg-type]
-        air(), air(), air(), ground(), ground(), ground(), numbers([0.0] * 8),
+        state(), state(), state(), state(), air(), air(), many(4), many(3), many(9), many(9), many(4), many(8),  # type: ignore[arg-type]
+        ground(), ground(), ground(), numbers([0.0] * 25), numbers([0.0] * 5),
     )  # fmt: skip
 
 
@@ -108,9 +107,10 @@ def _mixing_and_slopes(method: Method, grid: Grid, state: Column, work: Work) ->
     """Exchange coefficients at the interfaces and how they answer to the gradients."""
     theta, humidity, u, v = state.theta, state.humidity, state.u, state.v
     exchange = work.exchange
-    ga, gb, gc = work.gradient
+    ga, gb, gc, gq = work.gradient
     ka, kb, kc = work.gain
     closure = method.closure
+    moist = grid.moist
     density, inverse, length, tail = grid.density, grid.inverse_spacing, grid.length_squared, grid.tail
     for i in range(len(theta) - 1):
         d = inverse[i]
@@ -120,13 +120,16 @@ def _mixing_and_slopes(method: Method, grid: Grid, state: Column, work: Work) ->
         a = (t1 - t0) * d
         b = (u[i + 1] - u[i]) * d
         c = (v[i + 1] - v[i]) * d
-        stability = buoyancy * a + GRAVITY * VIRTUAL * (humidity[i + 1] - humidity[i]) * d
+        w = (humidity[i + 1] - humidity[i]) * d
+        a += moist * w
+        stability = buoyancy * a
         k, k_n, k_s = diffusivity(closure, tail[i], length[i], stability, b * b + c * c + LEAST_SHEAR_SQUARED)
         carry = density[i] * d
         exchange[i] = carry * k
         ga[i] = carry * a
         gb[i] = carry * b
         gc[i] = carry * c
+        gq[i] = carry * w
         ka[i] = k_n * buoyancy
         kb[i] = 2.0 * k_s * b
         kc[i] = 2.0 * k_s * c
@@ -137,6 +140,7 @@ def _mixing(method: Method, grid: Grid, state: Column, exchange: Numbers) -> Non
     """Exchange coefficients alone."""
     theta, humidity, u, v = state.theta, state.humidity, state.u, state.v
     closure = method.closure
+    moist = grid.moist
     density, inverse, length, tail = grid.density, grid.inverse_spacing, grid.length_squared, grid.tail
     for i in range(len(theta) - 1):
         d = inverse[i]
@@ -144,7 +148,7 @@ def _mixing(method: Method, grid: Grid, state: Column, exchange: Numbers) -> Non
         t1 = theta[i + 1]
         b = (u[i + 1] - u[i]) * d
         c = (v[i + 1] - v[i]) * d
-        stability = GRAVITY * d * (2.0 * (t1 - t0) / (t0 + t1) + VIRTUAL * (humidity[i + 1] - humidity[i]))
+        stability = 2.0 * GRAVITY * d * (t1 - t0 + moist * (humidity[i + 1] - humidity[i])) / (t0 + t1)
         k, _, _ = diffusivity(closure, tail[i], length[i], stability, b * b + c * c + LEAST_SHEAR_SQUARED)
         exchange[i] = density[i] * d * k
 

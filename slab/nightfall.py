@@ -37,8 +37,8 @@ from slab.night import NightOptions, NightStart, Setup, prepare
 from slab.night_answers import (
     CROSSING_HEIGHT,
     DRY_ADIABATIC,
-    fog_depth,
     flux_needed,
+    fog_depth,
     friction_velocity,
     inverse_obukhov,
     largest_flux,
@@ -60,6 +60,7 @@ Array = NDArray[np.float64]
 
 CHUNK = 300.0  # [s] long-wave and forcing are held this long (NIGHT column: half of it changes a night by under 0.02 K)
 COLUMN_TOP = 2000.0  # [m]
+MAST = 10.0  # [m]
 MORNING = EVENING + 1
 
 
@@ -111,7 +112,18 @@ def begin(start: Handover, ground: Ground, place: Place, closure: str) -> Setup:
         grid.mass[i] = float(cells[i])
         state.theta[i] = float(theta[i])
         state.humidity[i] = float(humidity[i])
+        calm = _below_mast(float(grid.height[i]), ground.roughness_momentum)
+        state.u[i] *= calm
+        state.v[i] *= calm
     return setup
+
+
+def _below_mast(height: float, roughness: float) -> float:
+    """Share of the 10 m wind that the lowest cells start with, by the neutral logarithmic law: a profile's first wind
+    is read at 10 m and a slab's wind holds above its surface layer."""
+    if height >= MAST:
+        return 1.0
+    return math.log((height + roughness) / roughness) / math.log((MAST + roughness) / roughness)
 
 
 def edges_of(setup: Setup) -> Array:
@@ -219,7 +231,8 @@ def through_night(first: int, last: int, times: Array, table: Array, start: Hand
         own = moved(start.air, None, _NOTHING, centre_mass)
         other = moved(later, None, _NOTHING, centre_mass)
         change = tuple(b - a for a, b in zip(own, other, strict=True))
-    totals, gained = numbers([0.0] * 8), [0.0, 0.0]
+    heat, vapour, *aloft, sensible, into = start.sums
+    totals, gained = numbers([heat, vapour, 0.0, sensible, 0.0, into, 0.0, 0.0]), list(aloft)
     notes: dict[int, NightNote] = {}
     at, step, upward, k = _NOTHING, 1.0, 0, first
     while True:
@@ -238,12 +251,13 @@ def through_night(first: int, last: int, times: Array, table: Array, start: Hand
             if piece == 0:
                 link = right_side(setup.method, grid, setup.foot, setup.soil, drive, outside, state, setup.work.rates,
                                   setup.work, False)  # fmt: skip
-                _write(record[k], setup, ground, drive, table[k], link, at, totals, gained, heights)
+                if k > first or math.isnan(start.residual_top):
+                    _write(record[k], setup, ground, drive, table[k], link, at, totals, gained, heights)
                 notes[k] = _note(setup, ground, drive, link)
                 upward = upward + 1 if record[k][INDEX["buoyancy_flux"]] > 0.0 else 0
                 if k == last or upward >= 2:
                     reason = RAN_TO_END if k == last else MORNING
-                    return _finish(k, reason, setup, start, later, at, notes)
+                    return _finish(k, reason, setup, start, later, at, notes, totals, gained)
             length = span / pieces
             step = advance(setup.method, grid, setup.foot, setup.soil, drive, outside, state, setup.work, totals,
                            length, step)  # fmt: skip
@@ -259,11 +273,12 @@ _NOTHING = Offsets(0.0, 0.0, 0.0, 0.0, 0.0, 0.0)
 
 
 def _finish(k: int, reason: int, setup: Setup, start: Handover, later: Aloft | None, at: Offsets,
-            notes: dict[int, NightNote]) -> NightCourse:  # fmt: skip
+            notes: dict[int, NightNote], totals: Numbers, gained: list[float]) -> NightCourse:  # fmt: skip
     """Close the night: one table of cells and the air above them, moved by what happened to it meanwhile."""
     grid, state = setup.grid, setup.state
     air, heat, vapour = column_after_night(edges_of(setup), grid, state, start.air, later, at)
     residual = start.residual_top * math.exp(-at.sunk) if math.isfinite(start.residual_top) else math.nan
-    handover = Handover(air, heat, vapour, tuple(state.soil), float(state.skin[0]), residual)
+    handover = Handover(air, heat, vapour, tuple(state.soil), float(state.skin[0]), residual,
+                        (totals[0], totals[1], gained[0], gained[1], totals[3], totals[5]))  # fmt: skip
     return NightCourse(k, reason, handover, np.asarray(grid.height), np.cumsum(np.asarray(grid.mass)), notes, at)
 
