@@ -1,7 +1,7 @@
 """The measured column made ready for use: stated tests, named and counted repairs, re-basing, interpolation.
 
 Repairs by name, in the order they are made (each with the number of levels it touched and its rule in words):
-pressure unit, temperature unit, dew point unit, pressure from height, level without pressure, reversed order,
+what a reader mends (not-a-number cell, repeated header, humidity unit, message cut short, record cut short), pressure unit, temperature unit, dew point unit, pressure from height, level without pressure, reversed order,
 level out of order, duplicate level, level below ground, ground temperature carried down, level without temperature,
 dew point above temperature, dew point refused, humidity interpolated, humidity at the ground, humidity aloft,
 elevation from pressure, height unit, height above ground, height replaced, height integrated, ground level added,
@@ -80,6 +80,19 @@ def _aware(valid: datetime | None, place: str) -> datetime | None:
             f"time {valid.isoformat()} has no offset from UTC", place=place, remedy="write it as 2026-07-01T12:00Z"
         )
     return valid.astimezone(UTC)
+
+
+def _when(sounding: Sounding, valid: datetime | None, default: datetime | None, place: str) -> datetime:
+    """Time of release: as told, else of the file, else the default."""
+    when = _aware(valid, place) or _aware(sounding.valid, place) or _aware(default, place)
+    if when is not None:
+        return when
+    told = f" ({'; '.join(sounding.notes)})" if sounding.notes else ""
+    raise ProfileError(
+        f"the file does not say when the balloon was released{told}",
+        place=place,
+        remedy="give the time with offset, such as 2026-07-01T12:00Z, as the profile's valid time",
+    )
 
 
 def _marked_ground(levels: Levels) -> tuple[Levels, tuple[Repair, ...]]:
@@ -163,37 +176,21 @@ def prepare(
         ground, no time, or a time without offset.
     """
     place = sounding.file or "profile"
-    when = _aware(valid, place) or _aware(sounding.valid, place) or _aware(utc_default, place)
-    if when is None:
-        raise ProfileError(
-            "the file does not say when the balloon was released",
-            place=place,
-            remedy="give the time with offset, such as 2026-07-01T12:00Z, as the profile's valid time",
-        )
+    when = _when(sounding, valid, utc_default, place)
     levels, done = _first_pass(sounding)
-    done = sounding.repairs + done
-    marked = levels.surface >= 0
     warm, windy, more = _with_temperature(levels, place)
-    done += more
-    warm, humidity_known, more = fill_humidity(warm)
-    done += more
-    base = sounding.elevation if elevation is None else elevation
-    if base is None and sounding.heights_above_ground:
-        lowest = float(np.nan_to_num(warm.height[0]))
-        base = float(standard_height(float(warm.pressure[0]))) - lowest
-        done += repair(
-            "elevation from pressure", 1, "heights are above ground: standard atmosphere at the lowest level"
-        )
-    warm, more, flags = settle_heights(warm, elevation=base, above_ground=sounding.heights_above_ground)
-    done += more
-    column, ground, more, doubtful = set_ground(
-        column_of(warm), base, marked=marked, exact=sounding.heights_above_ground, place=place
+    warm, humidity_known, last = fill_humidity(warm)
+    done = sounding.repairs + done + more + last
+    column, ground, more, flags = _on_ground(
+        warm,
+        sounding.elevation if elevation is None else elevation,
+        marked=levels.surface >= 0,
+        above_ground=sounding.heights_above_ground,
+        place=place,
     )
-    done, flags = done + more, flags + doubtful
-    column, more = place_wind_levels(column, windy.pressure, windy.u, windy.v)
-    done += more
+    column, last = place_wind_levels(column, windy.pressure, windy.u, windy.v)
+    done += more + last
     column, wind_known, more = fill_wind(column)
-    done += more
     if column.height[-1] < TOP_MIN:
         raise ProfileError(
             f"the profile ends {column.height[-1]:.0f} m above ground",
@@ -211,9 +208,27 @@ def prepare(
         station=sounding.station,
         file=sounding.file,
         format=sounding.format,
-        repairs=done,
+        repairs=done + more,
         flags=flags + doubts(column),
     )
+
+
+def _on_ground(
+    warm: Levels, elevation: float | None, *, marked: bool, above_ground: bool, place: str
+) -> tuple[Column, float, tuple[Repair, ...], tuple[Flag, ...]]:
+    """Settle the heights and find the ground: column with height above it, its elevation, repairs, flags."""
+    done: tuple[Repair, ...] = ()
+    if elevation is None and above_ground:
+        lowest = float(np.nan_to_num(warm.height[0]))
+        elevation = float(standard_height(float(warm.pressure[0]))) - lowest
+        done += repair(
+            "elevation from pressure", 1, "heights are above ground: standard atmosphere at the lowest level"
+        )
+    warm, more, flags = settle_heights(warm, elevation=elevation, above_ground=above_ground)
+    column, ground, last, doubtful = set_ground(
+        column_of(warm), elevation, marked=marked, exact=above_ground, place=place
+    )
+    return column, ground, done + more + last, flags + doubtful
 
 
 def _first(*values: float | None) -> float:

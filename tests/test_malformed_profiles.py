@@ -8,10 +8,13 @@ from datetime import UTC, datetime
 from pathlib import Path
 
 import pytest
+from hypothesis import given, settings
+from hypothesis import strategies as st
+from observed import folder
 
 from forcing.errors import ProfileError
 from forcing.profile import prepare
-from forcing.readers import read_sounding
+from forcing.readers import parse, read_sounding
 
 VALID = datetime(2026, 7, 1, 12, tzinfo=UTC)
 HEAD = "pressure_hPa,height_m,temperature_C,dewpoint_C,wind_dir_deg,wind_speed_m_s"
@@ -61,6 +64,14 @@ REPAIRED: dict[str, tuple[str | bytes, str | None]] = {
     "decimal comma with semicolons": (GOOD.replace(",", ";").replace(".", ","), None),
     "pressure in Pa": (column(0, "{h}"), "pressure unit"),
     "temperature in K": (column(2, "{k}"), "temperature unit"),
+    "humidity as a fraction": (
+        column(3, "0.5").replace("dewpoint_C", "relative_humidity_pct"),
+        "humidity unit",
+    ),
+    "kelvins beside relative humidity": (
+        column(2, "{k}").replace("dewpoint_C", "relative_humidity_pct").replace(",-", ","),
+        "temperature unit",
+    ),
     "reversed": (HEAD + "\n" + "\n".join(ROWS.splitlines()[::-1]), "reversed order"),
     "duplicate level": (GOOD.replace("900,1042", "950,580"), "duplicate level"),
     "every level twice": (HEAD + "\n" + "\n".join(row for r in ROWS.splitlines() for row in (r, r)), "duplicate level"),
@@ -99,6 +110,8 @@ REFUSED: dict[str, tuple[str | bytes, tuple[str, ...]]] = {
     "too low a top": ("\n".join(GOOD.splitlines()[:2]) + "\n970,398,21,9,,\n965,440,20,9,,\n", ("ends", "reach 500 m")),
     "text in a number": (GOOD.replace("16.0", "warm"), ("line 4", "temperature_C 'warm'", "blank")),
     "missing code": (GOOD.replace("16.0", "-9999"), ("line 4", "-9999", "leave it empty")),
+    "digits in groups": (GOOD.replace("5728", "5_728"), ("line 9", "height_m '5_728'", "blank")),
+    "endless line": (GOOD + "9" * 200_000 + "\n", ("line 10", "remove the line")),
     "infinite": (GOOD.replace("16.0", "inf"), ("line 4", "inf", "leave it empty")),
     "absurd temperature": (GOOD.replace("22.0,9.0", "71.6,9.0"), ("line 2", "71.6", "unit")),
     "temperature in tenths": (column(2, "{0:.0f}0"), ("line 2", "220 C", "unit")),
@@ -162,6 +175,15 @@ def test_repaired(case: str, tmp_path: Path) -> None:
         assert name in names
 
 
+@pytest.mark.observed
+def test_original_binary_messages_are_refused_by_name() -> None:
+    paths = sorted((folder() / "raw" / "bufr").iterdir())
+    assert len(paths) == 6
+    for path in paths:
+        with pytest.raises(ProfileError, match="BUFR message"):
+            read_sounding(path)
+
+
 @pytest.mark.parametrize("case", REFUSED)
 def test_refused(case: str, tmp_path: Path) -> None:
     data, words = REFUSED[case]
@@ -186,11 +208,22 @@ def test_every_utf8_prefix_of_a_message_is_repaired_or_refused(tmp_path: Path) -
                 assert error.remedy  # noqa: PT017
 
 
+@settings(max_examples=150, deadline=None)
+@given(st.sampled_from((TEMP, IGRA, GOOD)), st.integers(0, 10_000), st.text("0123456789/-. ,;#\nANX=", max_size=4))
+def test_any_scribble_is_repaired_or_refused(text: str, at: int, scribble: str) -> None:
+    at %= len(text)
+    try:
+        prepare(parse(text[:at] + scribble + text[at + len(scribble) :], "scribbled.txt", valid=VALID))
+    except ProfileError as error:
+        if not (error.remedy and "scribbled.txt" in str(error)):
+            raise AssertionError(str(error)) from error
+
+
 def test_no_warning_on_standard_error(tmp_path: Path) -> None:
     path = tmp_path / "given.csv"
     path.write_text(GOOD.replace("5.0,220,4", ",,"), encoding="utf-8")
     code = (
-        "import sys; from datetime import datetime, UTC; from forcing.readers import read_sounding; "
+        "import sys; from datetime import datetime, UTC; from forcing.readers import parse, read_sounding; "
         "from forcing.profile import prepare; prepare(read_sounding(sys.argv[1], valid=datetime(2026, 7, 1, tzinfo=UTC)))"
     )
     done = subprocess.run([sys.executable, "-c", code, str(path)], capture_output=True, text=True, check=False)

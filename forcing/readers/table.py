@@ -11,18 +11,24 @@ from __future__ import annotations
 
 import csv
 import difflib
+from dataclasses import replace
 from datetime import UTC, datetime
+
+import numpy as np
 
 from forcing.air import (
     ZERO_CELSIUS,
     dew_point,
+    each,
     humidity_from_mixing_ratio,
     saturation_vapour_pressure,
     vapour_pressure,
 )
 from forcing.errors import ProfileError
+from forcing.levels import mend_units
 from forcing.readers.text import NAN, Row, arrays
-from forcing.sounding import Repair, Sounding
+from forcing.readers.text import number as decimal
+from forcing.sounding import Array, Repair, Sounding
 from forcing.units import KNOT_M_S
 
 # column -> (quantity, factor, offset to SI)
@@ -74,15 +80,17 @@ def read(text: str, name: str) -> Sounding:
     delimiter = next((mark for mark in (";", "\t") if mark in header), ",")
     names = _names(header, delimiter, number, name)
     rows: list[Row] = []
+    values: list[dict[str, float]] = []
     again = cells_nan = 0
     for number, line in body[1:]:
-        cells = next(csv.reader([line], delimiter=delimiter))
+        cells = _cells(line, delimiter, number, name)
         if [cell.strip() for cell in cells] == list(names):
             again += 1
             continue
-        row, count = _row(cells, names, delimiter, number, name)
+        level, count = _level(cells, names, delimiter, number, name)
         cells_nan += count
-        rows.append(row)
+        values.append(level)
+        rows.append(Row(number, **{key: value for key, value in level.items() if key not in HUMIDITY[1:]}))
     if not rows:
         raise ProfileError(
             "a header but no level (0 lines of numbers)", place=f"{name}, line {body[0][0]}", remedy="add the levels"
@@ -93,7 +101,7 @@ def read(text: str, name: str) -> Sounding:
     if cells_nan:
         repairs += (Repair("not-a-number cell", cells_nan, "nan in the table: read as missing"),)
     numbers = {key: _told_number(told, key, name) for key in ("latitude", "longitude", "elevation_m")}
-    return Sounding(
+    sounding = Sounding(
         *arrays(rows),
         lines=tuple(row.line for row in rows),
         valid=_told_time(told, name),
@@ -106,6 +114,7 @@ def read(text: str, name: str) -> Sounding:
         heights_above_ground="height_agl_m" in names,
         repairs=repairs,
     )
+    return _with_dewpoint(sounding, values)
 
 
 def _metadata(lines: list[str], name: str) -> dict[str, tuple[str, int]]:
@@ -131,7 +140,7 @@ def _told_number(told: dict[str, tuple[str, int]], key: str, name: str) -> float
     value, line = told[key]
     low, high = {"latitude": (-90.0, 90.0), "longitude": (-180.0, 360.0)}.get(key, (-500.0, 9000.0))
     try:
-        number = float(value)
+        number = decimal(value)
     except ValueError:
         number = NAN
     if not low <= number <= high:
@@ -157,9 +166,18 @@ def _told_time(told: dict[str, tuple[str, int]], name: str) -> datetime | None:
     return time.astimezone(UTC)
 
 
+def _cells(line: str, delimiter: str, number: int, name: str) -> list[str]:
+    try:
+        return next(csv.reader([line], delimiter=delimiter))
+    except csv.Error as error:
+        raise ProfileError(
+            f"{line[:20]!r}... is no table line: {error}", place=f"{name}, line {number}", remedy="remove the line"
+        ) from None
+
+
 def _names(header: str, delimiter: str, number: int, name: str) -> list[str]:
     place = f"{name}, line {number}"
-    names = [cell.strip() for cell in next(csv.reader([header], delimiter=delimiter))]
+    names = [cell.strip() for cell in _cells(header, delimiter, number, name)]
     seen: dict[str, str] = {}
     for column in names:
         if column not in COLUMNS:
@@ -186,7 +204,7 @@ def _names(header: str, delimiter: str, number: int, name: str) -> list[str]:
     return names
 
 
-def _row(cells: list[str], names: list[str], delimiter: str, number: int, name: str) -> tuple[Row, int]:
+def _level(cells: list[str], names: list[str], delimiter: str, number: int, name: str) -> tuple[dict[str, float], int]:
     place = f"{name}, line {number}"
     if len(cells) > len(names) and any(cell.strip() for cell in cells[len(names) :]):
         raise ProfileError(
@@ -211,7 +229,7 @@ def _row(cells: list[str], names: list[str], delimiter: str, number: int, name: 
         if not text:
             continue
         try:
-            value = float(text)
+            value = decimal(text)
         except ValueError:
             raise ProfileError(
                 f"{column} {cell.strip()!r} is not a number", place=place, remedy="leave the cell blank where missing"
@@ -224,25 +242,38 @@ def _row(cells: list[str], names: list[str], delimiter: str, number: int, name: 
                 place=place,
                 remedy="correct it, or leave the cell blank where missing",
             )
-    return _to_row(values, number), count
+    return values, count
 
 
-def _to_row(values: dict[str, float], number: int) -> Row:
-    temperature, pressure = values.get("temperature", NAN), values.get("pressure", NAN)
-    dewpoint = values.get("dewpoint", NAN)
-    vapour = NAN
-    if "relative_humidity" in values and temperature > 50.0:
-        vapour = values["relative_humidity"] * saturation_vapour_pressure(temperature)
-    if "mixing_ratio" in values and pressure > 0.0:
-        vapour = vapour_pressure(humidity_from_mixing_ratio(values["mixing_ratio"]), pressure)
-    if vapour > 0.0:
-        dewpoint = dew_point(vapour)
-    return Row(
-        number,
-        pressure,
-        values.get("height", NAN),
-        temperature,
-        dewpoint,
-        values.get("wind_speed", NAN),
-        values.get("wind_from", NAN),
+def _humidity(values: list[dict[str, float]]) -> tuple[str, Array, tuple[Repair, ...]]:
+    """Name and numbers of a humidity column other than dew point ("" where there is none)."""
+    for quantity in HUMIDITY[1:]:
+        column = np.array([row.get(quantity, NAN) for row in values])
+        known = np.isfinite(column)
+        if not known.any():
+            continue
+        if quantity == "relative_humidity" and known.sum() >= 3 and column[known].max() <= 0.01:
+            detail = "values named percent were fractions of 1: read as fractions"
+            return quantity, column * 100.0, (Repair("humidity unit", int(known.sum()), detail),)
+        return quantity, column, ()
+    return "", np.full(len(values), NAN), ()
+
+
+def _with_dewpoint(sounding: Sounding, values: list[dict[str, float]]) -> Sounding:
+    """Turn relative humidity or mixing ratio into dew point, after units of temperature and pressure are mended."""
+    quantity, column, repairs = _humidity(values)
+    if not quantity:
+        return sounding
+    mended, done = mend_units(sounding)
+    t, p = mended.temperature, mended.pressure
+    usable = (
+        (column > 0.0) & (t > 150.0) & (t < 350.0) if quantity == "relative_humidity" else (column > 0.0) & (p > 0.0)
     )
+    dewpoint = np.full(column.size, NAN)
+    if usable.any():
+        if quantity == "relative_humidity":
+            vapour = column[usable] * each(saturation_vapour_pressure, t[usable])
+        else:
+            vapour = each(vapour_pressure, each(humidity_from_mixing_ratio, column[usable]), p[usable])
+        dewpoint[usable] = each(dew_point, vapour)
+    return replace(mended, dewpoint=dewpoint, repairs=sounding.repairs + repairs + done)

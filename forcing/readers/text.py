@@ -70,6 +70,13 @@ def _decoded(data: bytes, encoding: str, name: str) -> str:
         ) from error
 
 
+def number(text: str) -> float:
+    """Read a decimal number; `ValueError` for anything else, also for what only Python calls one (1_000)."""
+    if "_" in text:
+        raise ValueError(text)
+    return float(text)
+
+
 def merge_rows(rows: Iterable[Row]) -> list[Row]:
     """Sort rows from the ground up and join those of equal pressure (parts of one message repeat levels)."""
     levels: list[Row] = []
@@ -114,7 +121,7 @@ def choose(soundings: list[Sounding], valid: datetime | None, name: str) -> Soun
     Raises
     ------
     ProfileError
-        None within 3 h, or several and no time asked; the message lists what is there.
+        None within 3 h, several and no time asked, or several stations; the message lists what is there.
     """
     if valid is None:
         if len(soundings) == 1:
@@ -133,6 +140,13 @@ def choose(soundings: list[Sounding], valid: datetime | None, name: str) -> Soun
             f"no sounding within 3 h of {valid:%Y-%m-%dT%H:%MZ}; there is {listing(soundings)}",
             place=name,
             remedy="ask for one of these times",
+        )
+    others = [s for s in timed if s.station != near.station and distance(s, valid) == distance(near, valid)]
+    if others:
+        raise ProfileError(
+            f"{1 + len(others)} stations at that time: {listing([near, *others])}",
+            place=name,
+            remedy="give a file with one of them",
         )
     return near
 

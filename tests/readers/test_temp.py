@@ -13,7 +13,7 @@ from observed import folder
 from forcing.errors import ProfileError
 from forcing.profile import prepare
 from forcing.readers import parse, parse_all, read_sounding
-from forcing.readers.temp import depression, geopotential, temperature, wind
+from forcing.readers.temp_codes import depression, geopotential, temperature, wind
 
 NOON = datetime(2026, 7, 3, 12, tzinfo=UTC)
 # surface 1004 hPa 21.4 C, dew point 12.4 C, 240 degrees 7 kt; release 11:31
@@ -124,6 +124,8 @@ def test_two_stations_in_one_bulletin() -> None:
     assert [s.station for s in parse_all(bulletin(AA, other), "two.txt")] == ["99901", "99902"]
     with pytest.raises(ProfileError, match="2 soundings in one file: 99901"):
         parse(bulletin(AA, other), "two.txt")
+    with pytest.raises(ProfileError, match=r"two.txt: 2 stations at that time: 99901 .*, 99902"):
+        parse(bulletin(AA, other), "two.txt", valid=NOON)
 
 
 @pytest.mark.parametrize(
