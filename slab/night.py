@@ -40,10 +40,9 @@ from slab.night_surface import BOUNDARIES, ENERGY, TEMPERATURE, Drive, Footing, 
 from slab.night_terms import Method, Outside, Soil, Work, make_work, right_side
 
 Array = NDArray[np.float64]
-LongWave = Callable[[Column, Grid, float], tuple[float, Numbers]]
-"""(column, grid, seconds) -> down at the ground [W m-2], heating of every cell's theta [K s-1]; called every chunk."""
-
-SKIN_CAPACITY = 2000.0  # [J m-2 K-1] about half a millimetre of water: follows the balance within two minutes (own choice)
+SKIN_CAPACITY = (
+    2000.0  # [J m-2 K-1] about half a millimetre of water: follows the balance within two minutes (own choice)
+)
 CHUNK = 300.0  # [s] forcing and long-wave are held this long; half of it changes a night by less than 0.02 K (own test)
 HEIGHTS = (1.5, 2.0, 9.0, 10.0)
 
@@ -185,6 +184,10 @@ class Setup:
     log_ratio: float
 
 
+LongWave = Callable[[Setup, float], tuple[float, Numbers]]
+"""(setup, seconds since the last call) -> down at the ground [W m-2], heating of every cell's theta [K s-1]."""
+
+
 def layered_soil(thickness: tuple[float, ...], conductivity: float, heat_capacity: float) -> Soil:
     """Capacities and conductances of soil layers of `thickness` [m]."""
     dz = np.asarray(thickness)
@@ -221,7 +224,9 @@ def prepare(start: NightStart, ground: Ground, options: NightOptions) -> Setup:
             f"{len(start.soil)} soil temperatures for {len(thickness)} layers", remedy="give one temperature a layer"
         )
     edges = cell_edges(options.levels, options.first_cell, options.top)
-    theta, humidity, u, v = (cell_means(edges, start.height, x) for x in (start.theta, start.humidity, start.u, start.v))
+    theta, humidity, u, v = (
+        cell_means(edges, start.height, x) for x in (start.theta, start.humidity, start.u, start.v)
+    )
     grid = build_grid(
         edges, theta, humidity, surface_pressure=start.surface_pressure, roughness=ground.roughness_momentum,
         constant_density=options.constant_density,
@@ -234,9 +239,7 @@ def prepare(start: NightStart, ground: Ground, options: NightOptions) -> Setup:
     if options.constant_density is not None:
         foot = foot._replace(density=options.constant_density)
     scale = options.tolerance
-    method = Method(
-        CLOSURES[options.closure], BOUNDARIES[options.boundary], 0.05 * scale, 0.1 * scale, 0.2 * scale
-    )
+    method = Method(CLOSURES[options.closure], BOUNDARIES[options.boundary], 0.05 * scale, 0.1 * scale, 0.2 * scale)
     soil = layered_soil(thickness, ground.soil_conductivity, ground.soil_heat_capacity)
     log_ratio = neutral_logs(CROSSING_HEIGHT, ground.roughness_momentum, ground.roughness_heat)[0]
     return Setup(method, grid, foot, soil, state, make_work(options.levels, len(thickness)), log_ratio)
@@ -309,7 +312,7 @@ def run(start: NightStart, ground: Ground, forcing: NightForcing, *, duration: f
         middle = now + 0.5 * length
         down, heating = forcing.at("longwave_down", middle), None
         if longwave is not None:
-            down, heating = longwave(state, grid, now)
+            down, heating = longwave(setup, options.chunk if now > 0.0 else 0.0)
         outside = outside_air(forcing, setup, middle, start.coriolis, heating)
         drive = drive_ground(setup, ground, forcing, middle, length, down)
         if now >= due - 1e-6:
@@ -317,10 +320,13 @@ def run(start: NightStart, ground: Ground, forcing: NightForcing, *, duration: f
             due += options.output
         if now >= duration - 1e-6:
             break
-        step = advance(setup.method, grid, setup.foot, setup.soil, drive, outside, state, setup.work, totals, length, step)
+        step = advance(
+            setup.method, grid, setup.foot, setup.soil, drive, outside, state, setup.work, totals, length, step
+        )
         if step < 0.0:
             raise ModelError(
-                f"the night column could not be solved at {now / 3600.0:.2f} h", remedy="check wind and temperature input"
+                f"the night column could not be solved at {now / 3600.0:.2f} h",
+                remedy="check wind and temperature input",
             )
         for i in range(len(state.theta)):
             gained[0] += grid.mass[i] * outside.theta_rate[i] * length
@@ -359,7 +365,9 @@ def observe(setup: Setup, ground: Ground, options: NightOptions, drive: Drive, o
     link = right_side(setup.method, grid, foot, setup.soil, drive, outside, state, work.rates, work, True)
     rough = (ground.roughness_momentum, ground.roughness_heat)
     crossing = read_air(grid, foot, state, link, *rough, CROSSING_HEIGHT)
-    needed = flux_needed(setup.method.boundary, foot, drive, link, crossing.temperature + DRY_ADIABATIC * CROSSING_HEIGHT)
+    needed = flux_needed(
+        setup.method.boundary, foot, drive, link, crossing.temperature + DRY_ADIABATIC * CROSSING_HEIGHT
+    )
     possible = largest_flux(crossing.wind, CROSSING_HEIGHT, setup.log_ratio, state.theta[0], foot.density)
     return {
         "seconds": now,

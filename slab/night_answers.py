@@ -14,8 +14,12 @@ from forcing.speed import kernel
 from slab.night_grid import Column, Grid, Numbers
 from slab.night_surface import ENERGY, Drive, Footing, Link
 
-STRESS_SHARE = 0.05  # depth: where stress falls to this share of the surface value, divided by 1 - share (Beare et al. 2006)
-CROSSING_HEIGHT = 40.0  # [m] where the wind stays about constant in the evening: "some decametres" (Van de Wiel et al. 2012)
+STRESS_SHARE = (
+    0.05  # depth: where stress falls to this share of the surface value, divided by 1 - share (Beare et al. 2006)
+)
+CROSSING_HEIGHT = (
+    40.0  # [m] where the wind stays about constant in the evening: "some decametres" (Van de Wiel et al. 2012)
+)
 STABLE_SLOPE = 5.0  # phi = 1 + 5 z/L in the maximum flux (alpha of Van de Wiel et al. 2012)
 STEEPEST = 2.0  # [m-1] bound on |1/L|, only reached when turbulence has died
 SIMILARITY_TOP = 30.0  # [m] above it the column is read linearly
@@ -146,7 +150,7 @@ def minimum_wind(needed: float, height: float, log_ratio: float, theta: float, d
     """
     if needed <= 0.0:
         return 0.0
-    return (needed / largest_flux(1.0, height, log_ratio, theta, density)) ** (1.0 / 3.0)
+    return math.pow(needed / largest_flux(1.0, height, log_ratio, theta, density), 1.0 / 3.0)
 
 
 @kernel
@@ -212,4 +216,3 @@ def sinking_rates(divergence: float, grid: Grid, values: Numbers, out: Numbers) 
         j = min(i, last - 1) if divergence > 0.0 else max(i - 1, 0)
         slope = (values[j + 1] - values[j]) * grid.inverse_spacing[j]
         out[i] += divergence * grid.height[i] * slope
-

@@ -35,7 +35,7 @@ class Bulk(NamedTuple):
 @kernel
 def _root(zeta: float) -> float:
     """r with r (r + 1) (r + 2) / 10 = zeta, from above by Newton's rule."""
-    r = min(5.0 * zeta, (10.0 * zeta) ** (1.0 / 3.0))
+    r = min(5.0 * zeta, math.pow(10.0 * zeta, 1.0 / 3.0))
     for _ in range(40):
         step = (r * (r + 1.0) * (r + 2.0) - 10.0 * zeta) / (3.0 * r * r + 6.0 * r + 2.0)
         r -= step

@@ -64,4 +64,3 @@ def diffusivity(
         length_squared * slope / shear,
         length_squared * (0.5 * f - richardson * slope) / shear,
     )
-

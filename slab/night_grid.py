@@ -12,16 +12,18 @@ from collections.abc import MutableSequence, Sequence
 from typing import NamedTuple
 
 import numpy as np
-from forcing.air import GRAVITY, KAPPA, KARMAN, P_REFERENCE, R_DRY, VIRTUAL
 from numpy.typing import NDArray
 
+from forcing.air import GRAVITY, KAPPA, KARMAN, P_REFERENCE, R_DRY, VIRTUAL
 from forcing.errors import ModelError
 from forcing.speed import COMPILED
 
 LEVELS = 48
 FIRST_CELL = 2.0  # [m]
 TOP = 2000.0  # [m above displacement and roughness length]
-FREE_LENGTH = 40.0  # [m] mixing length far from the ground (own choice after GABLS1, where 40 m and phi = 1 + 5 z/L fit)
+FREE_LENGTH = (
+    40.0  # [m] mixing length far from the ground (own choice after GABLS1, where 40 m and phi = 1 + 5 z/L fit)
+)
 TAIL_DEPTH = 200.0  # [m] height over which the long tail of `blend` hands over to the sharp one (recalled)
 
 Array = NDArray[np.float64]
@@ -127,10 +129,8 @@ def build_grid(
     thickness = np.diff(edges)
     centre = 0.5 * (edges[1:] + edges[:-1])
     pressure = _edge_pressure(edges, theta, humidity, surface_pressure)
-    if constant_density is None:
-        mass = (pressure[:-1] - pressure[1:]) / GRAVITY
-    else:
-        mass = constant_density * thickness
+    hydrostatic = (pressure[:-1] - pressure[1:]) / GRAVITY
+    mass = hydrostatic if constant_density is None else constant_density * thickness
     inner = edges[1:-1]
     rho = mass / thickness
     above = centre + roughness

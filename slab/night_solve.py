@@ -174,9 +174,7 @@ def _fill_corner(
         latent = ground.latent_heat
         conduction = foot.skin_conductance * (1.0 - work.soil_transfer[0])
         by_theta = heat * ground.heat_t + latent * ground.vapour_t
-        w[0] = foot.skin_capacity + gh * (
-            ground.lost + heat * ground.heat_s + latent * ground.vapour_s + conduction
-        )
+        w[0] = foot.skin_capacity + gh * (ground.lost + heat * ground.heat_s + latent * ground.vapour_s + conduction)
         w[1] = gh * (latent * ground.vapour_q - moist * by_theta)
         w[2] = gh * by_theta
         w[3] = gh * (heat * ground.heat_u + latent * ground.vapour_u)

@@ -14,7 +14,7 @@ from forcing.air import CP_DRY
 from forcing.speed import kernel
 from slab.night_grid import Column, Grid, Numbers
 from slab.night_solve import factor, solve
-from slab.night_surface import FLUX, TEMPERATURE, Drive, Footing, Link
+from slab.night_surface import FLUX, Drive, Footing, Link
 from slab.night_terms import Method, Outside, Soil, Work, right_side
 
 GAMMA = 1.0 + 1.0 / math.sqrt(2.0)
@@ -78,19 +78,13 @@ def _error(method: Method, h: float, first: Column, second: Column) -> float:
         u = abs(au[i] + bu[i])
         v = abs(av[i] + bv[i])
         total += t + u + v + aq[i] + bq[i]
-        if t > worst_theta:
-            worst_theta = t
-        if u > worst_wind:
-            worst_wind = u
-        if v > worst_wind:
-            worst_wind = v
+        worst_theta = max(worst_theta, t)
+        worst_wind = max(worst_wind, u, v)
     skin = abs(first.skin[0] + second.skin[0])
     total += skin
     if total - total != 0.0:
         return math.nan
-    worst = max(
-        worst_theta / method.tolerance_theta, worst_wind / method.tolerance_wind, skin / method.tolerance_skin
-    )
+    worst = max(worst_theta / method.tolerance_theta, worst_wind / method.tolerance_wind, skin / method.tolerance_skin)
     return 0.5 * h * worst
 
 
@@ -192,7 +186,7 @@ def advance(
             totals[7] += 1.0
             if h <= method.least_step:
                 return -1.0
-            factor_down = 0.2 if error != error else max(0.2, 0.9 / math.sqrt(error))
+            factor_down = 0.2 if math.isnan(error) else max(0.2, 0.9 / math.sqrt(error))
             h = max(method.least_step, h * factor_down)
         _accept(state, h, work.first, work.second)
         _add_fluxes(method.boundary, h, gh, foot, ground, there, work, totals)

@@ -23,7 +23,6 @@ from forcing.air import (
     saturation_vapour_pressure,
     saturation_vapour_pressure_ice,
 )
-
 from forcing.speed import kernel
 from slab.night_bulk import bulk
 
@@ -34,10 +33,14 @@ BOUNDARIES = {"energy": ENERGY, "temperature": TEMPERATURE, "flux": FLUX}
 
 LEAST_WIND = 0.1  # [m s-1] added in quadrature to the lowest wind, so that calm air keeps a defined transfer
 COLDEST, HOTTEST = 180.0, 360.0  # [K] range over which saturation is evaluated; only failing trial steps leave it
-MELT_CONDUCTANCE = 500.0  # [W m-2 K-1] spent on melting per kelvin a snow skin is over the melting point: holds it there
+MELT_CONDUCTANCE = (
+    500.0  # [W m-2 K-1] spent on melting per kelvin a snow skin is over the melting point: holds it there
+)
 SUBLIMATION = 2.834e6  # [J kg-1] as in forcing.transfer
 VAPORISATION = 2.5e6  # [J kg-1] only in the slope of saturation, as in forcing.transfer
-FLUX_RELAXATION = 1.0  # [W m-2 K-1] ties the skin to the air where fluxes are prescribed: no runaway beyond the possible flux
+FLUX_RELAXATION = (
+    1.0  # [W m-2 K-1] ties the skin to the air where fluxes are prescribed: no runaway beyond the possible flux
+)
 
 
 class Footing(NamedTuple):
