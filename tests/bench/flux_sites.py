@@ -19,7 +19,7 @@ from pathlib import Path
 HERE = Path(__file__).resolve().parent
 sys.path.insert(0, str(HERE.parents[1]))
 
-from forcing.air import (  # noqa: E402
+from forcing.air import (
     CP_DRY,
     GRAVITY,
     STEFAN_BOLTZMANN,
@@ -27,9 +27,9 @@ from forcing.air import (  # noqa: E402
     humidity_from_vapour_pressure,
     saturation_vapour_pressure,
 )
-from forcing.cover import cover, ground  # noqa: E402
-from forcing.soil import implicit_soil  # noqa: E402
-from forcing.surface import Exchange, Ground, energy_balance, energy_balance_net, soil_layers  # noqa: E402
+from forcing.cover import cover, ground
+from forcing.soil import implicit_soil
+from forcing.surface import Exchange, Ground, energy_balance, energy_balance_net, soil_layers
 
 DAYLIGHT = 20.0  # W m-2 of net radiation from which an hour counts as day
 DEPTH = 1000.0  # m, mixed layer assumed for the gusts
@@ -212,10 +212,13 @@ def partition_table(sites: Sequence[Site], folder: Path) -> list[str]:
     lines = [
         "",
         "partition by day, measured net radiation in; odd days (odd hours at a site with one day); W m-2",
-        "'fixed ratio': measured net radiation minus measured ground heat (0.1 of it where none), split by the Bowen ratio of the even days",
+        "'fixed': measured net radiation minus measured ground heat (0.1 of it where none), split by the Bowen ratio of the even days",
         "'closed': measured H and LE scaled to net radiation minus ground heat with their ratio kept",
-        f"{'site':<12}{'n':>5}{'closure':>9} | {'H':>6}{'model':>7}{'rmse':>7}{'fixed':>7} | {'LE':>6}{'model':>7}{'rmse':>7}{'fixed':>7}"
-        f" | {'H closed':>9}{'rmse':>7}{'fixed':>7} | {'LE closed':>10}{'rmse':>7}{'fixed':>7}",
+        (
+            f"{'site':<12}{'n':>5}{'closure':>9} | {'H':>6}{'model':>7}{'rmse':>7}{'fixed':>7}"
+            f" | {'LE':>6}{'model':>7}{'rmse':>7}{'fixed':>7} | {'H closed':>9}{'rmse':>7}{'fixed':>7}"
+            f" | {'LE closed':>10}{'rmse':>7}{'fixed':>7}"
+        ),
     ]
     for site in sites:
         rows = [row for row in read_rows(folder / site.file) if site.start <= row.time.date().isoformat() <= site.end]
