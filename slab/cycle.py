@@ -12,18 +12,17 @@ from forcing.air import KAPPA, P_REFERENCE, coriolis, each, temperature
 from forcing.cover import ground as ground_of
 from forcing.errors import ModelError, ScenarioError
 from forcing.longwave_column import Anchor
-from forcing.profile import Profile
 from forcing.scenario_types import Scenario
 from forcing.surface import Ground, soil_layers
 from forcing.table import LATENT, LATER_WEIGHT, NET_RADIATION, SENSIBLE, SHORTWAVE, Knots, knot_times, tabulate
-from slab.column import Aloft, as_numbers, from_profile, on_same_levels, sample
-from slab.daytime import EAST, HEAT, MASS, MEMBERS, NORTH, SOIL, SOIL_LAYERS, VAPOUR, Offsets, Place
+from slab.column import Aloft, as_numbers, from_profile, on_same_levels
+from slab.daytime import EAST, HEAT, MASS, MEMBERS, NORTH, SOIL, SOIL_LAYERS, SURFACE_HEAT, VAPOUR, Offsets, Place
 from slab.growth import CLOSURES, Closure
 from slab.handover import Handover, column_after_slab
 from slab.march import EVENING, FAILED, RAN_TO_END, REACHED_TOP, STANDARD, Control, march, scratch
 from slab.nightfall import MORNING, NightCourse, through_night
 from slab.radiation import NightSky, anchored, free_air_heating, sky_column
-from slab.record import FIELDS, INDEX, NAMES
+from slab.record import FIELDS, INDEX, NAMES, SUMS
 from slab.start import GroundStart, first_mass, ground_start, yesterday
 
 Array = NDArray[np.float64]
@@ -161,13 +160,13 @@ def _by_day(stage: _Stage, first: int, start: Handover) -> tuple[Part, int, Hand
     for row, value in zip(stage.rows, weight, strict=True):
         row[LATER_WEIGHT] = float(value)  # type: ignore[index]
     mass = first_mass(air)
-    here = sample(air, mass, 0.0)
     y = as_numbers(np.zeros(MEMBERS))
     state: list[float] = y  # type: ignore[assignment]
     state[MASS], state[HEAT], state[VAPOUR] = mass, start.heat, start.vapour
     inside = np.asarray(air.mass) <= mass
     state[EAST], state[NORTH] = (float(np.mean(np.asarray(x)[inside])) for x in (air.u, air.v))
     state[SOIL : SOIL + SOIL_LAYERS] = list(start.soil)
+    state[SURFACE_HEAT:MEMBERS] = list(start.sums)
     work = scratch()
     work.memory[0] = start.skin
     sky = sky_column(
@@ -181,15 +180,15 @@ def _by_day(stage: _Stage, first: int, start: Handover) -> tuple[Part, int, Hand
         as_numbers(np.array(soil_layers(stage.ground))), stage.closure, stage.control, work, sky,
         as_numbers(np.array(stage.heights)), stage.record,  # type: ignore[arg-type]
     )  # fmt: skip
-    del here
     if reason == FAILED:
         raise ModelError(f"the mixed layer could not be stepped at knot {reached}", remedy="check wind and temperature input")
     wind = (state[EAST], state[NORTH])
     column, heat, vapour = column_after_slab(air, later, at, state, wind, softened=False)
     depth = float(np.interp(state[MASS], np.asarray(air.mass), np.asarray(air.height)))
     handover = Handover(
-        column, heat, vapour, tuple(float(t) for t in state[SOIL : SOIL + SOIL_LAYERS]), float(work.memory[0]), depth
-    )
+        column, heat, vapour, tuple(float(t) for t in state[SOIL : SOIL + SOIL_LAYERS]), float(work.memory[0]), depth,
+        tuple(float(x) for x in state[SURFACE_HEAT:MEMBERS]),
+    )  # fmt: skip
     return Part(DAY, first, reached, air, later, None), reason, handover
 
 
@@ -238,7 +237,7 @@ def run(scenario: Scenario, *, control: Control = STANDARD, heights: tuple[float
     soil = None if stage.knots.fluxes_given else ground_start(scenario, stage.ground)
     layers = soil.soil if soil is not None else (float(scenario.profile.temperature[0]),) * SOIL_LAYERS
     skin = soil.skin if soil is not None else float(scenario.profile.temperature[0])
-    handover = Handover(from_profile(scenario.profile), 0.0, 0.0, layers, skin, math.nan)
+    handover = Handover(from_profile(scenario.profile), 0.0, 0.0, layers, skin, math.nan, (0.0,) * SUMS)
     parts: list[Part] = []
     night = _starts_by_night(stage)
     last = len(stage.times) - 1

@@ -21,6 +21,7 @@ from forcing.air import (
     VIRTUAL,
 )
 from forcing.soil import soil_rates_from
+from forcing.speed import kernel
 from forcing.surface import Exchange, Ground, energy_balance, energy_balance_net, imposed_fluxes
 from forcing.table import (
     ANTHROPOGENIC,
@@ -39,8 +40,6 @@ from forcing.table import (
     SHORTWAVE,
     WIND_10M,
 )
-
-from forcing.speed import kernel
 from slab.column import Aloft, Sample, as_numbers, height_of, sample
 from slab.growth import Closure, Slab, cumulus_fraction, encroached_mass, entrainment, slab_at, velocity_scale
 

@@ -32,6 +32,8 @@ class Handover:
         [K].
     residual_top : float
         Top of the last mixed layer [m above ground], NaN before there was one.
+    sums : tuple of float
+        Running sums of the record so far, from its ``surface_heat`` on.
     """
 
     air: Aloft
@@ -40,6 +42,7 @@ class Handover:
     soil: tuple[float, ...]
     skin: float
     residual_top: float
+    sums: tuple[float, ...]
 
 
 def moved(air: Aloft, later: Aloft | None, at: Offsets, mass: Array) -> tuple[Array, Array, Array, Array]:

@@ -8,10 +8,9 @@ from typing import NamedTuple
 
 import numpy as np
 
-from forcing.surface import Ground
-
 from forcing.air import GRAVITY
 from forcing.speed import kernel
+from forcing.surface import Ground
 from forcing.table import CLOUD, CLOUD_BASE, COLUMNS, LONGWAVE
 from slab.column import Aloft, as_numbers, height_of, mass_of, sample
 from slab.daytime import (

@@ -1,0 +1,197 @@
+"""How numbers, heights and hours of a result are said, for text and picture alike."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Mapping
+from dataclasses import dataclass
+from datetime import UTC, datetime
+from typing import Any, Literal
+from zoneinfo import ZoneInfo
+
+from forcing.errors import DaylayerError
+from forcing.units import (
+    FIRE_WIND_HEIGHT_M,
+    FOOT_M,
+    KNOT_M_S,
+    MILE_PER_HOUR_M_S,
+    SQUARE_METRES_PER_S_PER_KNOT_FOOT,
+    log_wind_factor,
+    round_to,
+)
+
+__all__ = ["METRIC", "US", "Clock", "Units", "number", "units_named"]
+
+Document = Mapping[str, Any]
+
+OPEN_GROUND_ROUGHNESS_M = 0.03  # short grass; Davenport class 3, "open" (Wieringa 1992)
+UNKNOWN = "not known"
+
+
+def number(value: float, step: float) -> str:
+    """Text of a value rounded to a step, without a trailing point and never minus zero."""
+    rounded = round_to(value, step)
+    decimals = max(0, -math.floor(math.log10(step))) if step < 1.0 else 0
+    return f"{rounded + 0.0:.{decimals}f}"
+
+
+@dataclass(frozen=True, slots=True)
+class Units:
+    """One set of display units; every method takes SI (or degrees C) and gives text."""
+
+    name: Literal["metric", "us"]
+    height_unit: str
+    speed_unit: str
+    temperature_unit: str
+    ventilation_unit: str
+
+    def height_value(self, metres: float) -> float:
+        """Height in the display unit."""
+        return metres if self.name == "metric" else metres / FOOT_M
+
+    def height_step(self, metres: float) -> float:
+        """Rounding step: 50 m or 100 ft (common practice), finer where that would hide a shallow layer."""
+        if self.name == "metric":
+            return 50.0 if metres >= 500.0 else 10.0
+        return 100.0 if metres >= 500.0 else 50.0 if metres >= 60.0 else 10.0
+
+    def height(self, metres: float | None) -> str:
+        """Height with its unit."""
+        if metres is None:
+            return UNKNOWN
+        return f"{number(self.height_value(metres), self.height_step(abs(metres)))} {self.height_unit}"
+
+    def above_ground(self, metres: float | None, elevation: float | None) -> str:
+        """Height above ground in words; us adds the height above sea level."""
+        if metres is None:
+            return UNKNOWN
+        text = f"{self.height(metres)} above ground"
+        if self.name == "us" and elevation is not None:
+            text += f" ({number(self.height_value(metres + elevation), 100.0)} ft above sea level)"
+        return text
+
+    def height_change(self, metres: float) -> str:
+        """Signed change of a height, to 5 m or 20 ft."""
+        return f"{round_to(self.height_value(metres), 5.0 if self.name == 'metric' else 20.0):+.0f} {self.height_unit}"
+
+    def temperature_value(self, celsius: float) -> float:
+        """Temperature in the display unit."""
+        return celsius if self.name == "metric" else celsius * 1.8 + 32.0
+
+    def temperature(self, celsius: float | None) -> str:
+        """Temperature with its unit."""
+        if celsius is None:
+            return UNKNOWN
+        step = 0.1 if self.name == "metric" else 1.0
+        return f"{number(self.temperature_value(celsius), step)} {self.temperature_unit}"
+
+    def difference(self, kelvin: float, *, signed: bool = False) -> str:
+        """Temperature difference with its unit."""
+        value, unit = (kelvin, "K") if self.name == "metric" else (kelvin * 1.8, "°F")
+        text = number(value, 0.1)
+        return f"{'+' if signed and not text.startswith('-') else ''}{text} {unit}"
+
+    def speed_value(self, metres_per_second: float) -> float:
+        """Wind aloft or transport wind in the display unit: m/s or kt."""
+        return metres_per_second if self.name == "metric" else metres_per_second / KNOT_M_S
+
+    def speed(self, metres_per_second: float | None) -> str:
+        """Wind speed with its unit."""
+        if metres_per_second is None:
+            return UNKNOWN
+        return f"{number(self.speed_value(metres_per_second), 0.1 if self.name == 'metric' else 1.0)} {self.speed_unit}"
+
+    def surface_wind_value(self, ten_metre: float, roughness: float = OPEN_GROUND_ROUGHNESS_M) -> float:
+        """10 m wind in m/s, or the 20 ft wind in mph by the neutral logarithmic profile over a roughness [m]."""
+        if self.name == "metric":
+            return ten_metre
+        factor = log_wind_factor(FIRE_WIND_HEIGHT_M, 10.0, min(roughness, 1.0))
+        return ten_metre * factor / MILE_PER_HOUR_M_S
+
+    def ventilation_value(self, square_metres_per_second: float) -> float:
+        """Ventilation in the display unit: m2/s or kt ft."""
+        if self.name == "metric":
+            return square_metres_per_second
+        return square_metres_per_second / SQUARE_METRES_PER_S_PER_KNOT_FOOT
+
+    def ventilation(self, square_metres_per_second: float | None) -> str:
+        """Ventilation to two figures (common practice) with its unit."""
+        if square_metres_per_second is None:
+            return UNKNOWN
+        value = self.ventilation_value(square_metres_per_second)
+        return f"{two_figures(value)} {self.ventilation_unit}"
+
+
+METRIC = Units("metric", "m", "m/s", "°C", "m²/s")
+US = Units("us", "ft", "kt", "°F", "kt ft")
+
+
+def units_named(name: str) -> Units:
+    """Units of the option's word.
+
+    Raises
+    ------
+    DaylayerError
+        For any other word.
+    """
+    known = {"metric": METRIC, "us": US}
+    if name not in known:
+        raise DaylayerError(f"units {name!r} are not known", remedy="use metric or us")
+    return known[name]
+
+
+def two_figures(value: float) -> str:
+    """Text of a value to two significant figures, never in powers of ten."""
+    if value == 0.0:
+        return "0"
+    step = 10.0 ** (math.floor(math.log10(abs(value))) - 1)
+    return number(value, step)
+
+
+_POINTS = ("north", "north-east", "east", "south-east", "south", "south-west", "west", "north-west")
+
+
+def compass(degrees: float) -> str:
+    """Eight-point name of the direction a wind comes from."""
+    return _POINTS[round(degrees / 45.0) % 8]
+
+
+@dataclass(frozen=True, slots=True)
+class Clock:
+    """Says the hours of one result in local time and UTC."""
+
+    zone: ZoneInfo
+    start: datetime
+
+    @classmethod
+    def of(cls, document: Document) -> Clock:
+        """Clock of a document: its site's zone and its first hour."""
+        return cls(
+            ZoneInfo(document["site"].get("time_zone") or "UTC"), datetime.fromisoformat(document["series"]["time"][0])
+        )
+
+    def local(self, moment: datetime) -> datetime:
+        """Local time of an aware time."""
+        return moment.astimezone(self.zone)
+
+    def offset(self, moment: datetime | None = None) -> str:
+        """Offset from UTC in words, such as ``UTC-06:00``."""
+        text = self.local(moment or self.start).strftime("%z")
+        return f"UTC{text[:3]}:{text[3:5]}"
+
+    def say(self, iso: str | None, *, half_hours: bool = False, utc: bool = True, zone: bool = True) -> str:
+        """``16:00 local (22:00 UTC)``, with the local date where it is not the first day's.
+
+        With ``half_hours`` the time is rounded to the half hour, for events that no model knows to the minute.
+        """
+        if iso is None:
+            return UNKNOWN
+        moment = datetime.fromisoformat(iso).astimezone(UTC)
+        if half_hours:
+            moment = datetime.fromtimestamp(round_to(moment.timestamp(), 1800.0), tz=UTC)
+        local = self.local(moment)
+        text = f"{local:%H:%M}"
+        if local.date() != self.local(self.start).date():
+            text += f" on {local:%a} {local.day} {local:%b}"
+        text += " local" if zone else ""
+        return f"{text} ({moment:%H:%M} UTC)" if utc else text
