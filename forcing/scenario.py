@@ -190,6 +190,21 @@ def _rebuilt(scenario: Scenario, settings: Settings) -> Scenario:
     return build(settings, folder=Path(), source=scenario.source, text=scenario.text, parts=parts)
 
 
+_NEEDED_FLAGS = {
+    "latitude": "--latitude (degrees north)",
+    "longitude": "--longitude (degrees east)",
+    "elevation": "--elevation (m above sea level)",
+    "time_zone": "--zone (IANA name such as Etc/GMT+6)",
+    "valid": "--valid (time of the profile, such as 2026-07-01T12:00Z)",
+}
+
+
+def _settings_of_flags(sections: Mapping[str, Mapping[str, object]]) -> dict[str, object]:
+    return {
+        name: {key: value for key, value in values.items() if value is not None} for name, values in sections.items()
+    }
+
+
 def from_flags(
     *,
     profile: str | Path,
@@ -231,46 +246,35 @@ def from_flags(
     """
     from forcing.readers import read_sounding
 
-    source = FLAGS_SOURCE
-    sections: dict[str, dict[str, object]] = {
-        "profile": {"file": str(profile), "valid": valid, "rebase": rebase},
-        "surface": {"cover": cover, "soil_moisture": soil_moisture},
-        "weather": {
-            "cloud_fraction": cloud,
-            "pressure_gradient_wind_m_s": wind,
-            "pressure_gradient_wind_from_deg": wind_from,
-        },
-        "run": {"hours": hours},
-    }
-    settings: dict[str, object] = {
-        name: {key: value for key, value in values.items() if value is not None} for name, values in sections.items()
-    }
-    when = check_layout({**settings, "site": {}}, source)["profile"].time("valid")
+    settings = _settings_of_flags(
+        {
+            "profile": {"file": str(profile), "valid": valid, "rebase": rebase},
+            "surface": {"cover": cover, "soil_moisture": soil_moisture},
+            "weather": {
+                "cloud_fraction": cloud,
+                "pressure_gradient_wind_m_s": wind,
+                "pressure_gradient_wind_from_deg": wind_from,
+            },
+            "run": {"hours": hours},
+        }
+    )
+    when = check_layout({**settings, "site": {}}, FLAGS_SOURCE)["profile"].time("valid")
     sounding = read_sounding(Path(profile), valid=when)
-    ground = release_elevation(sounding)
-    lacking = [
-        text
-        for text, flag, told in (
-            ("--latitude (degrees north)", latitude, sounding.latitude),
-            ("--longitude (degrees east)", longitude, sounding.longitude),
-            ("--elevation (m above sea level)", elevation, ground),
-            ("--zone (IANA name such as Etc/GMT+6)", zone, None),
-            ("--valid (time of the profile, such as 2026-07-01T12:00Z)", when, sounding.valid),
-        )
-        if flag is None and told is None
-    ]
+    told = {
+        "latitude": sounding.latitude if latitude is None else latitude,
+        "longitude": sounding.longitude if longitude is None else longitude,
+        "elevation": release_elevation(sounding) if elevation is None else elevation,
+        "time_zone": zone,
+        "valid": sounding.valid if when is None else when,
+    }
+    lacking = [text for key, text in _NEEDED_FLAGS.items() if told[key] is None]
     if lacking:
         raise ScenarioError(
             "the file does not say everything the forecast needs",
             place=str(profile),
             remedy="add " + ", ".join(lacking),
         )
-    settings["site"] = {
-        "name": sounding.station or Path(profile).stem,
-        "latitude": sounding.latitude if latitude is None else latitude,
-        "longitude": sounding.longitude if longitude is None else longitude,
-        "elevation": ground if elevation is None else elevation,
-        "time_zone": zone,
-    }
+    del told["valid"]
+    settings["site"] = {"name": sounding.station or Path(profile).stem, **told}
     settings["title"] = title or f"From {Path(profile).name}"
-    return build(settings, folder=Path(), source=source)
+    return build(settings, folder=Path(), source=FLAGS_SOURCE)

@@ -10,7 +10,7 @@ from pathlib import Path
 from typing import TYPE_CHECKING
 from zoneinfo import ZoneInfo
 
-from forcing.errors import ScenarioError
+from forcing.errors import ScenarioError, WeatherError
 from forcing.scenario_types import (
     ENTRAINMENTS,
     REBASE_RULES,
@@ -273,9 +273,15 @@ def read_weather_of(section: Section, folder: Path, parts: Parts | None, *, wind
                 "a direction without a speed", place=section.place(f"{wind}_from_deg"), remedy=f"add {wind}_m_s"
             )
     if parts is not None and parts.same(section, ("file",)):
-        return Weather(constants, parts.weather.series, parts.weather.file, defaults)
-    path = section.path("file", folder)
-    table = Weather() if path is None else read_weather(path, constants)
+        table = parts.weather
+    else:
+        path = section.path("file", folder)
+        table = Weather() if path is None else read_weather(path)
+    for name in constants:
+        if name in table.series:
+            raise WeatherError(
+                f"column '{name}' is also given as a constant", place=table.file, remedy="keep one of the two"
+            )
     return Weather(constants, table.series, table.file, defaults)
 
 

@@ -137,6 +137,26 @@ class Weather:
         rest = {key: series for key, series in self.series.items() if key != name}
         return Weather({**self.constants, name: value}, rest, self.file, self.defaults)
 
+    def shifted(self, name: str, amount: float) -> Weather:
+        """Weather with one input shifted by an amount in the unit of its name, kept within its bounds.
+
+        A direction turns by the amount. An input that is neither given nor defaulted cannot be shifted.
+        """
+        column = _column(name)
+        if name in self.series:
+            old = self.series[name]
+            values = old.values + column.factor * amount
+            values = (
+                values % 360.0 if column.direction else np.clip(values, column.si(column.low), column.si(column.high))
+            )
+            series = {**self.series, name: Series(old.posix, values, old.direction)}
+            return Weather(self.constants, series, self.file, self.defaults)
+        value = self.constants.get(name, self.defaults.get(name))
+        if value is None:
+            raise WeatherError(f"{name} is not given, so it cannot be shifted", remedy="give it in the scenario")
+        moved = value + amount
+        return self.with_constant(name, moved % 360.0 if column.direction else min(max(moved, column.low), column.high))
+
 
 @dataclass(frozen=True, slots=True)
 class FluxTable:
@@ -205,17 +225,12 @@ def check_constant(name: str, value: float, *, place: str) -> None:
         )
 
 
-def read_weather(path: Path, constants: Mapping[str, float] | None = None) -> Weather:
-    """Weather from an hourly CSV; constants serve the columns that it does not have."""
+def read_weather(path: Path) -> Weather:
+    """Weather from an hourly CSV with the columns of `COLUMNS` that it has."""
     series = read_table(path, COLUMNS.get, list(COLUMNS))
     if not series:
         raise WeatherError("has a time column only", place=str(path), remedy="add columns: " + ", ".join(COLUMNS))
-    for name in constants or {}:
-        if name in series:
-            raise WeatherError(
-                f"column '{name}' is also given as a constant", place=str(path), remedy="keep one of the two"
-            )
-    return Weather(constants=dict(constants or {}), series=series, file=str(path))
+    return Weather(series=series, file=str(path))
 
 
 def read_fluxes(path: Path) -> FluxTable:

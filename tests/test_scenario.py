@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import sys
 from dataclasses import fields
 from datetime import UTC, datetime
 from pathlib import Path
@@ -237,6 +238,17 @@ def test_weather_file_beside_constants(folder: Path) -> None:
     assert with_run(case, hours=3.0, entrainment="buoyant").run.hours == 3.0
     stepped = next(one for one in case.assumptions if one.key == "surface.soil_moisture")
     assert with_step(case, stepped).weather.series == case.weather.series
+
+
+def test_bundled_scenarios_are_found_inside_a_wheel(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    package = tmp_path / "slab"
+    (package / "scenarios").mkdir(parents=True)
+    (package / "__init__.py").write_text("raise RuntimeError('found, never imported')\n", encoding="ascii")
+    (package / "scenarios" / "one.toml").write_text("", encoding="ascii")
+    monkeypatch.delitem(sys.modules, "slab", raising=False)
+    monkeypatch.syspath_prepend(str(tmp_path))
+    assert bundled_names() == ("one",)
+    assert bundled("one") == package / "scenarios" / "one.toml"
 
 
 def test_with_setting_takes_back_a_value(folder: Path) -> None:

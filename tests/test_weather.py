@@ -111,6 +111,23 @@ def test_one_constant_replaces_a_column(tmp_path: Path) -> None:
     assert weather.sample("cloud_fraction", np.array([NOON])) == pytest.approx([0.1])
 
 
+def test_an_input_is_shifted_within_its_bounds(tmp_path: Path) -> None:
+    path = _write(
+        tmp_path,
+        "time,cloud_fraction,temperature_2m_C,wind_10m_from_deg",
+        "2026-07-01T12:00Z,0.1,20,350",
+        "2026-07-01T14:00Z,0.9,24,350",
+    )
+    weather = read_weather(path)
+    at = np.array([NOON, NOON + 2 * HOUR])
+    assert weather.shifted("cloud_fraction", 0.3).sample("cloud_fraction", at) == pytest.approx([0.4, 1.0])
+    assert weather.shifted("temperature_2m_C", -2.0).sample("temperature_2m_C", at) == pytest.approx([291.15, 295.15])
+    assert weather.shifted("wind_10m_from_deg", 20.0).sample("wind_10m_from_deg", at) == pytest.approx([10.0, 10.0])
+    assert weather.shifted("divergence_per_s", 1e-5).sample("divergence_per_s", at) == pytest.approx([1e-5, 1e-5])
+    with pytest.raises(WeatherError, match="cannot be shifted"):
+        weather.shifted("rain_mm_h", 1.0)
+
+
 def test_unknown_input_is_suggested() -> None:
     with pytest.raises(WeatherError, match="did you mean 'cloud_fraction'"):
         Weather().sample("cloud_fracton", np.array([NOON]))
