@@ -158,22 +158,17 @@ def prepare(
     Parameters
     ----------
     sounding : Sounding
-        As read; left as it is.
     valid, latitude, longitude, elevation : optional
         Time (aware) and position of the *release*, over what the file says. Elevation in m above sea level; a site
         elsewhere is `rebase`'s business.
     utc_default : datetime, optional
         Time where neither `valid` nor the file has one.
 
-    Returns
-    -------
-    Profile
-
     Raises
     ------
     ProfileError
         Values no balloon can meet, no order in pressure, under 3 levels with temperature, a top under 500 m above
-        ground, no time, or a time without offset.
+        ground, no time or one without offset.
     """
     place = sounding.file or "profile"
     when = _when(sounding, valid, utc_default, place)
@@ -191,12 +186,7 @@ def prepare(
     column, last = place_wind_levels(column, windy.pressure, windy.u, windy.v)
     done += more + last
     column, wind_known, more = fill_wind(column)
-    if column.height[-1] < TOP_MIN:
-        raise ProfileError(
-            f"the profile ends {column.height[-1]:.0f} m above ground",
-            place=place,
-            remedy=f"it must reach {TOP_MIN:.0f} m; check the heights and that the file is complete",
-        )
+    _refuse_low_top(column, place)
     return Profile(
         *column,
         wind_known=wind_known,
@@ -211,6 +201,15 @@ def prepare(
         repairs=done + more,
         flags=flags + doubts(column),
     )
+
+
+def _refuse_low_top(column: Column, place: str) -> None:
+    if column.height[-1] < TOP_MIN:
+        raise ProfileError(
+            f"the profile ends {column.height[-1]:.0f} m above ground",
+            place=place,
+            remedy=f"it must reach {TOP_MIN:.0f} m; check the heights and that the file is complete",
+        )
 
 
 def _on_ground(
