@@ -192,7 +192,7 @@ def _over(
     size: float = SMALL,
     first: Array | None = None,
 ) -> None:
-    """Write words just above a line, or just below it, where they are clear."""
+    """Write words just above a line, just below it or beside it, where they are clear."""
     low, high = axes.get_ylim()
     known = [int(n) for n in np.flatnonzero(~np.isnan(level)) if low <= level[n] <= high]
     if first is not None:
@@ -201,15 +201,13 @@ def _over(
         middle = float(np.median(hours[known]))
         known.sort(key=lambda n: abs(hours[n] - middle))
     gap = _line_gap(axes)
-    aside = 0.07 * float(hours[-1])
-    places = [
-        (hours[n] + shift * aside, level[n] + lift * gap)
-        for shift in (0.0, 1.0, 2.0, -1.0)
-        for lift in (0.9, 1.4, -0.9, 2.2, -1.5)
-        for n in known
-    ]
-    style: dict[str, Any] = {"fontsize": size, "ha": "center", "va": "center", "zorder": 6}
-    placer.place(axes, words, places, color=INK[ground], path_effects=halo(LAYERS[ground], 2.5), **style)
+    above = [(hours[n], level[n] + lift * gap) for lift in (0.9, 1.4, -0.9, 2.2, -1.5) for n in known]
+    beside = [(hours[n] + 0.012 * hours[-1], level[n] + lift * gap) for lift in (0.0, 0.7, -0.7, 1.2) for n in known]
+    style: dict[str, Any] = {"fontsize": size, "va": "center", "zorder": 6, "color": INK[ground]}
+    style["path_effects"] = halo(LAYERS[ground], 2.5)
+    for align, places in (("center", above), ("left", beside)):
+        if placer.place(axes, words, places, ha=align, **style) is not None:
+            return
 
 
 def _name(axes: Axes, name: str, layers: DayLayers, low: Array, high: Array, placer: Placer) -> None:
