@@ -10,6 +10,8 @@ from collections.abc import Iterator
 from pathlib import Path
 from typing import TYPE_CHECKING, NamedTuple
 
+import numpy as np
+
 from forcing.scenario_parts import DEFAULT_COVER, DEFAULT_REBASE, DEFAULT_SOIL_MOISTURE, REBASE_FROM_M, SURFACE_KEYS
 from forcing.scenario_types import Assumption, Scenario
 
@@ -17,6 +19,9 @@ if TYPE_CHECKING:
     from forcing.sounding import Profile
 
 GIVEN, ASSUMED = "given", "assumed"
+#: Heights [m above ground] between which the pressure-gradient wind is read where none is given: where
+#: friction with the ground is small.
+WIND_ALOFT = (1000.0, 2000.0)
 STEP_COVER = "green crop"
 STEP_SOIL_MOISTURE = 0.25
 
@@ -199,11 +204,10 @@ def _weather(scenario: Scenario, defaults: tuple[_Default, ...]) -> Iterator[Ass
             yield Assumption(one.name, one.value, ASSUMED, one.why, one.step, key, one.stepped)
 
 
-def wind_near(profile: Profile, low: float = 500.0, high: float = 1500.0) -> tuple[float, float]:
+def wind_near(profile: Profile, low: float = WIND_ALOFT[0], high: float = WIND_ALOFT[1]) -> tuple[float, float]:
     """Speed [m/s] and direction it blows from [degrees] of the mean wind vector between two heights above ground [m]."""
-    import numpy as np
-
-    heights = np.linspace(low, min(high, float(profile.height[-1])), 21)
+    top = float(profile.height[-1])
+    heights = np.linspace(min(low, top), min(high, top), 21)
     u = float(np.mean(np.interp(heights, profile.height, profile.u)))
     v = float(np.mean(np.interp(heights, profile.height, profile.v)))
     return math.hypot(u, v), math.degrees(math.atan2(-u, -v)) % 360.0
@@ -229,7 +233,8 @@ def _winds(scenario: Scenario) -> Iterator[Assumption]:
         speed, from_deg = wind_near(scenario.profile)
         yield Assumption(
             name,
-            f"the profile's own wind, on average {speed:.1f} m/s from {from_deg:.0f} degrees at 500 to 1500 m above ground",
+            f"the profile's own wind, on average {speed:.1f} m/s from {from_deg:.0f} degrees at "
+            f"{WIND_ALOFT[0]:.0f} to {WIND_ALOFT[1]:.0f} m above ground",
             ASSUMED,
             "derived: no wind was given, so the wind above the layer is taken to stay",
             f"a constant {speed + 2.0:.1f} m/s, 2 m/s more",

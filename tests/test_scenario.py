@@ -12,6 +12,7 @@ import pytest
 from hypothesis import Phase, given, settings
 from hypothesis import strategies as st
 
+from forcing.assumptions import wind_near
 from forcing.errors import ProfileError, ScenarioError
 from forcing.scenario import (
     Scenario,
@@ -118,7 +119,12 @@ def test_everything_assumed_is_listed_with_a_reason(folder: Path) -> None:
     for key in ("surface.cover", "weather.wind_10m_m_s", "profile.later", "run.entrainment", "run.flux_ratio"):
         assert key in assumed
     wind = assumed["weather.pressure_gradient_wind_m_s"]
+    # wind between 1000 and 2000 m above ground is 10 m/s from 210 degrees, within the spread of the levels there
     assert "profile's own wind" in wind.value_text
+    speed, from_deg = wind_near(_load(folder).profile)
+    assert speed == pytest.approx(10.0, abs=0.7)
+    assert from_deg == pytest.approx(212.0, abs=5.0)
+    assert wind.stepped == pytest.approx(speed + 2.0, abs=0.05)
     for one in assumed.values():
         assert one.name
         assert one.value_text
