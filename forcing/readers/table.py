@@ -10,7 +10,6 @@ Comma, semicolon (decimal comma allowed) or tab between cells.
 from __future__ import annotations
 
 import csv
-import difflib
 from dataclasses import replace
 from datetime import UTC, datetime
 
@@ -181,6 +180,8 @@ def _names(header: str, delimiter: str, number: int, name: str) -> list[str]:
     seen: dict[str, str] = {}
     for column in names:
         if column not in COLUMNS:
+            import difflib  # only an error needs it
+
             close = difflib.get_close_matches(column, COLUMNS, n=1, cutoff=0.5)
             hint = f"did you mean {close[0]}?" if close else f"known are {', '.join(COLUMNS)}"
             raise ProfileError(f"unknown column {column!r}", place=place, remedy=f"{hint} Or remove the column")
