@@ -71,7 +71,7 @@ def humidity_at_wet_bulb(dry: float, wet: float, pressure: float) -> float:
     return 0.5 * (low + high)
 
 
-WIDER = 309.3 * (KAPPA - 287.0 / 1004.0) * math.log(1003.0 / 850.0)  # K, by the exponent of B080
+WIDER = 309.3 * (0.286 - 287.0 / 1004.0) * math.log(1003.0 / 850.0)  # K, by the exponent of B080
 EXAMPLE = humidity_at_wet_bulb(40.0, 20.0, 101325.0)  # ASHRAE Example 1
 
 ROWS = [
@@ -121,9 +121,9 @@ ROWS = [
     ("B042", saturation_slope(303.35), 246.0, 1.0),  # FAO-56 Example 17
     ("B043", saturation_vapour_pressure(287.95), 1680.0, 10.0),  # FAO-56 Example 20
     # potential temperature, MetPy; the tolerance of 0.02 K widens by the exponent, 0.286 for 2/7
-    ("B050", potential_temperature(278.0, 90000.0), 286.496, 0.02 + 286.5 * (KAPPA - 2 / 7) * math.log(1 / 0.9)),
-    ("B051", potential_temperature(283.0, 50000.0), 344.981, 0.02 + 345.0 * (KAPPA - 2 / 7) * math.log(1 / 0.5)),
-    ("B052", potential_temperature(291.0, 30000.0), 410.475, 0.02 + 410.5 * (KAPPA - 2 / 7) * math.log(1 / 0.3)),
+    ("B050", potential_temperature(278.0, 90000.0), 286.496, 0.02 + 286.5 * (0.286 - 2 / 7) * math.log(1 / 0.9)),
+    ("B051", potential_temperature(283.0, 50000.0), 344.981, 0.02 + 345.0 * (0.286 - 2 / 7) * math.log(1 / 0.5)),
+    ("B052", potential_temperature(291.0, 30000.0), 410.475, 0.02 + 410.5 * (0.286 - 2 / 7) * math.log(1 / 0.3)),
     ("B053 a", temperature(303.15, 90000.0), 294.16, 0.05),
     ("B053 b", temperature(303.15, 86489.0), 290.83, 0.05),
     ("B054, G001", 1000.0 * GRAVITY / CP_DRY, 9.8, 0.05),  # common practice, K per km
