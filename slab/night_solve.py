@@ -32,6 +32,22 @@ def _factor_soil(boundary: int, gh: float, foot: Footing, soil: Soil, work: Work
 
 
 @kernel
+def _inverse(
+    b0: float, b1: float, b2: float, b3: float, b4: float, b5: float, b6: float, b7: float, b8: float
+) -> tuple[float, float, float, float, float, float, float, float, float]:
+    """Inverse of a 3 x 3 matrix given by rows."""
+    c0 = b4 * b8 - b5 * b7
+    c1 = b5 * b6 - b3 * b8
+    c2 = b3 * b7 - b4 * b6
+    r = 1.0 / (b0 * c0 + b1 * c1 + b2 * c2)
+    return (
+        c0 * r, (b2 * b7 - b1 * b8) * r, (b1 * b5 - b2 * b4) * r,
+        c1 * r, (b0 * b8 - b2 * b6) * r, (b2 * b3 - b0 * b5) * r,
+        c2 * r, (b1 * b6 - b0 * b7) * r, (b0 * b4 - b1 * b3) * r,
+    )  # fmt: skip
+
+
+@kernel
 def _factor_air(gh: float, coriolis: float, grid: Grid, work: Work) -> tuple[float, ...]:
     """Eliminate the blocks from the top to cell 1.
 
@@ -43,115 +59,51 @@ def _factor_air(gh: float, coriolis: float, grid: Grid, work: Work) -> tuple[flo
     p0, p1, p2, p3, p4, p5, p6, p7, p8 = work.inverse
     t0, t1, t2, t3, t4, t5, t6, t7, t8 = work.transfer
     pivot, carried, n0, n1, n2, row0, row1, row2 = work.vapour
-    turn = gh * coriolis
     above = r0 = r1 = r2 = 0.0
     d0 = d1 = d2 = d3 = d4 = d5 = d6 = d7 = d8 = 0.0
     for i in range(len(mass) - 1, 0, -1):
-        j = i - 1
-        m = mass[i]
-        e = gh * exchange[j]
-        a = gh * ga[j]
-        b = gh * gb[j]
-        c = gh * gc[j]
-        x = ka[j]
-        y = kb[j]
-        z = kc[j]
-        e0 = e + a * x
-        e1 = a * y
-        e2 = a * z
-        e3 = b * x
-        e4 = e + b * y
-        e5 = b * z
-        e6 = c * x
-        e7 = c * y
-        e8 = e + c * z
-        b0 = m + d0 + e0
-        b1 = d1 + e1
-        b2 = d2 + e2
-        b3 = d3 + e3
-        b4 = m + d4 + e4
-        b5 = d5 + e5 - turn * m
-        b6 = d6 + e6
-        b7 = d7 + e7 + turn * m
-        b8 = m + d8 + e8
-        c0 = b4 * b8 - b5 * b7
-        c1 = b5 * b6 - b3 * b8
-        c2 = b3 * b7 - b4 * b6
-        r = 1.0 / (b0 * c0 + b1 * c1 + b2 * c2)
-        i0 = c0 * r
-        i1 = (b2 * b7 - b1 * b8) * r
-        i2 = (b1 * b5 - b2 * b4) * r
-        i3 = c1 * r
-        i4 = (b0 * b8 - b2 * b6) * r
-        i5 = (b2 * b3 - b0 * b5) * r
-        i6 = c2 * r
-        i7 = (b1 * b6 - b0 * b7) * r
-        i8 = (b0 * b4 - b1 * b3) * r
-        p0[i] = i0
-        p1[i] = i1
-        p2[i] = i2
-        p3[i] = i3
-        p4[i] = i4
-        p5[i] = i5
-        p6[i] = i6
-        p7[i] = i7
-        p8[i] = i8
-        q = gh * gq[j]
-        r0 += q * x
-        r1 += q * y
-        r2 += q * z
-        row0[i] = r0
-        row1[i] = r1
-        row2[i] = r2
+        j, m = i - 1, mass[i]
+        turn = gh * coriolis * m
+        # the interface below: e I + (a, b, c) (x, y, z)^T for the block, q for humidity
+        e, a, b, c, q = gh * exchange[j], gh * ga[j], gh * gb[j], gh * gc[j], gh * gq[j]
+        x, y, z = ka[j], kb[j], kc[j]
+        i0, i1, i2, i3, i4, i5, i6, i7, i8 = _inverse(
+            m + d0 + e + a * x, d1 + a * y, d2 + a * z,
+            d3 + b * x, m + d4 + e + b * y, d5 + b * z - turn,
+            d6 + c * x, d7 + c * y + turn, m + d8 + e + c * z,
+        )  # fmt: skip
+        p0[i], p1[i], p2[i] = i0, i1, i2
+        p3[i], p4[i], p5[i] = i3, i4, i5
+        p6[i], p7[i], p8[i] = i6, i7, i8
+        r0, r1, r2 = r0 + q * x, r1 + q * y, r2 + q * z
+        row0[i], row1[i], row2[i] = r0, r1, r2
         wet = m + above + e
         pivot[i] = wet
-        # inverse times block: the block is e I + (a, b, c) (x, y, z)^T
+        # transfer: inverse times block
         f0 = i0 * a + i1 * b + i2 * c
         f1 = i3 * a + i4 * b + i5 * c
         f2 = i6 * a + i7 * b + i8 * c
-        w0 = e * i0 + f0 * x
-        w1 = e * i1 + f0 * y
-        w2 = e * i2 + f0 * z
-        w3 = e * i3 + f1 * x
-        w4 = e * i4 + f1 * y
-        w5 = e * i5 + f1 * z
-        w6 = e * i6 + f2 * x
-        w7 = e * i7 + f2 * y
-        w8 = e * i8 + f2 * z
-        t0[i] = w0
-        t1[i] = w1
-        t2[i] = w2
-        t3[i] = w3
-        t4[i] = w4
-        t5[i] = w5
-        t6[i] = w6
-        t7[i] = w7
-        t8[i] = w8
-        # humidity of this cell by that of the cell below and by its block
+        w0, w1, w2 = e * i0 + f0 * x, e * i1 + f0 * y, e * i2 + f0 * z
+        w3, w4, w5 = e * i3 + f1 * x, e * i4 + f1 * y, e * i5 + f1 * z
+        w6, w7, w8 = e * i6 + f2 * x, e * i7 + f2 * y, e * i8 + f2 * z
+        t0[i], t1[i], t2[i] = w0, w1, w2
+        t3[i], t4[i], t5[i] = w3, w4, w5
+        t6[i], t7[i], t8[i] = w6, w7, w8
+        # humidity of this cell by the block and the humidity of the cell below
         l0 = (q * x - r0 * w0 - r1 * w3 - r2 * w6) / wet
         l1 = (q * y - r0 * w1 - r1 * w4 - r2 * w7) / wet
         l2 = (q * z - r0 * w2 - r1 * w5 - r2 * w8) / wet
-        n0[i] = l0
-        n1[i] = l1
-        n2[i] = l2
+        n0[i], n1[i], n2[i] = l0, l1, l2
         carried[i] = e / wet
         above = e * (1.0 - e / wet)
-        # block times (I - transfer)
+        # what the cell below receives: block times (I - transfer)
         h0 = x - (x * w0 + y * w3 + z * w6)
         h1 = y - (x * w1 + y * w4 + z * w7)
         h2 = z - (x * w2 + y * w5 + z * w8)
-        d0 = e * (1.0 - w0) + a * h0
-        d1 = a * h1 - e * w1
-        d2 = a * h2 - e * w2
-        d3 = b * h0 - e * w3
-        d4 = e * (1.0 - w4) + b * h1
-        d5 = b * h2 - e * w5
-        d6 = c * h0 - e * w6
-        d7 = c * h1 - e * w7
-        d8 = e * (1.0 - w8) + c * h2
-        r0 = q * h0 - e * l0
-        r1 = q * h1 - e * l1
-        r2 = q * h2 - e * l2
+        d0, d1, d2 = e * (1.0 - w0) + a * h0, a * h1 - e * w1, a * h2 - e * w2
+        d3, d4, d5 = b * h0 - e * w3, e * (1.0 - w4) + b * h1, b * h2 - e * w5
+        d6, d7, d8 = c * h0 - e * w6, c * h1 - e * w7, e * (1.0 - w8) + c * h2
+        r0, r1, r2 = q * h0 - e * l0, q * h1 - e * l1, q * h2 - e * l2
     return d0, d1, d2, d3, d4, d5, d6, d7, d8, above, r0, r1, r2
 
 
@@ -160,7 +112,7 @@ def _fill_corner(
     method: Method, gh: float, coriolis: float, grid: Grid, foot: Footing, ground: Link, state: Column,
     above: tuple[float, ...], work: Work,
 ) -> None:  # fmt: skip
-    """Matrix of the lowest cell for (skin, humidity, buoyancy, u, v), row by row, and its triangular factors in place."""
+    """Matrix of the lowest cell for (skin, humidity, buoyancy, u, v), row by row."""
     w = work.corner
     u = state.u[0]
     v = state.v[0]
@@ -205,6 +157,11 @@ def _fill_corner(
     w[22] = d6 + gh * v * ground.drag_t
     w[23] = d7 + gh * v * ground.drag_u + turn
     w[24] = mass + d8 + gh * (ground.drag + v * ground.drag_v)
+
+
+@kernel
+def _factor_corner(w: Numbers) -> None:
+    """Triangular factors in place."""
     for k in range(4):
         for i in range(k + 1, 5):
             share = w[5 * i + k] / w[6 * k]
@@ -234,6 +191,7 @@ def factor(
     _factor_soil(method.boundary, gh, foot, soil, work)
     above = _factor_air(gh, coriolis, grid, work)
     _fill_corner(method, gh, coriolis, grid, foot, ground, state, above, work)
+    _factor_corner(work.corner)
 
 
 @kernel
