@@ -32,6 +32,8 @@ ENDINGS = ("png", "svg", "pdf")
 LEFT, RIGHT = 0.058, 0.985  # page edges of what is drawn
 WIDE = 0.635  # width of the panels that share the time axis
 SIDE = 0.735  # left edge of the right column
+HOURS, STRIP, RIBBON, GAP = 0.042, 0.075, 0.105, 0.008  # heights of the hours, the strips and the gaps between
+PROFILES_TO_TEXT = HOURS + 0.012 + RIBBON + STRIP + 2 * GAP - 0.062  # from the lower text up to the cautions
 GUTTER = 1.64 / PAGE[0]  # least blank band left of the first hour, as a part of the page
 
 
@@ -58,7 +60,8 @@ def day(document: Document, *, units: str = "metric") -> Figure:
     left_column = _sentences(document, chosen, ruler, half)
     middle_column = _inputs(document, chosen, ruler, half)
     rows = max(len(left_column), min(len(middle_column), 20))
-    below = 0.022 + rows * LINE
+    right_column = _cautions(document, chosen, ruler)
+    below = max(0.022 + rows * LINE, 0.012 + len(right_column) * LINE - PROFILES_TO_TEXT)
     axes = _panels(figure, top, below)
     length = float(hours_from_start(document, document["series"]["time"][-1])) or 1.0
     gutter = length * (band := _band(document, chosen, ruler)) / (WIDE - band)
@@ -81,7 +84,7 @@ def day(document: Document, *, units: str = "metric") -> Figure:
         )  # fmt: skip
     _column(figure, left_column, LEFT, below)
     _column(figure, _cut(middle_column, rows), LEFT + half + 0.02, below)
-    _right(figure, document, chosen, ruler, layers.get_position().y0 - 0.062)
+    _column(figure, right_column, SIDE, below + PROFILES_TO_TEXT)
     return figure
 
 
@@ -149,17 +152,15 @@ def _band(document: Document, units: Units, ruler: Ruler) -> float:
 
 def _panels(figure: Figure, top: float, below: float) -> list[Axes]:
     """Layers, temperature and fluxes under one another; two profiles beside the layers, on the same heights."""
-    hours, gap = 0.042, 0.008
-    strip, ribbon = 0.075, 0.105
-    ribbon_y = below + hours + 0.012
-    strip_y = ribbon_y + ribbon + gap
-    layers_y = strip_y + strip + gap
-    height = top - hours - 0.004 - layers_y
+    ribbon_y = below + HOURS + 0.012
+    strip_y = ribbon_y + RIBBON + GAP
+    layers_y = strip_y + STRIP + GAP
+    height = top - HOURS - 0.004 - layers_y
     narrow = 0.5 * (RIGHT - SIDE - 0.012)
     boxes = [
         (LEFT, layers_y, WIDE, height),
-        (LEFT, strip_y, WIDE, strip),
-        (LEFT, ribbon_y, WIDE, ribbon),
+        (LEFT, strip_y, WIDE, STRIP),
+        (LEFT, ribbon_y, WIDE, RIBBON),
         (SIDE, layers_y, narrow, height),
         (SIDE + narrow + 0.012, layers_y, narrow, height),
     ]
@@ -239,11 +240,11 @@ def _column(figure: Figure, lines: Lines, x: float, top: float) -> None:
         figure.text(x, top - n * LINE, text, fontsize=SMALL, va="top", fontweight="bold" if bold else "normal")
 
 
-def _right(figure: Figure, document: Document, units: Units, ruler: Ruler, top: float) -> None:
-    """Cautions, all of them, under the profiles."""
+def _cautions(document: Document, units: Units, ruler: Ruler) -> Lines:
+    """Cautions, all of them; they stand under the profiles."""
     lines: Lines = [("cautions", True)]
     for item in complete(document, units):
         lines += [
             (line, False) for line in ruler.wrap(f"{item['code']}  {item['text']}", RIGHT - SIDE, indent="      ")
         ]
-    _column(figure, lines, SIDE, top)
+    return lines

@@ -21,6 +21,7 @@ def sample(
     missing: bool = False,
     southern: bool = False,
     limits: bool = False,
+    crowded: bool = False,
     released_after_h: float = 0.1,
     coldest: float = 11.0,
     warmest: float = 28.5,
@@ -76,6 +77,27 @@ def sample(
         },
         "run": {"hours": hours, "output_minutes": 60, "entrainment": "sheared", "flux_ratio": 0.2, "version": "0.1.0"},
     }
+    return _crowd(document) if crowded else document
+
+
+def _crowd(document: Document) -> Document:
+    """The same document with far more words than a day usually has."""
+    names = ["dry adiabat and constant mixing ratio", "virtual potential temperature plus 0.5 K", "wind speed maximum"]
+    document["profile"]["tops"] += [
+        {"definition": name, "height_m": 205.0 + 9.0 * n, "detail": ""} for n, name in enumerate(names)
+    ]
+    deepest = document["summary"]["mixing_depth_max_m"]
+    document["summary"]["other_definitions"] += [
+        {"definition": name, "height_m": deepest + 5.0 * n} for n, name in enumerate(names)
+    ]
+    document["profile"]["station"] = "an invented release field with a long name beside the long invented river"
+    document["warnings"] += [
+        f"invented warning {n}: something about this profile deserves a second look before use" for n in range(3)
+    ]
+    document["doubts"] = [{"code": "old-profile", "text": "the profile is over 12 h old"}]
+    document["cautions"] += [
+        {"code": "X1", "text": "an invented caution that the product adds to the usual ones. " * 3}
+    ]
     return document
 
 
@@ -309,5 +331,6 @@ CASES: dict[str, dict[str, Any]] = {
     "very shallow": {"depth_max": 230.0, "night_depth": 30.0, "coldest": -6.0, "warmest": 2.0, "cumulus": False},
     "old balloon": {"released_after_h": -9.0},
     "late balloon": {"released_after_h": 7.0, "depth_max": 1200.0},
+    "crowded": {"crowded": True, "limits": True},
     "southern winter": {"southern": True, "depth_max": 900.0, "coldest": 3.0, "warmest": 13.5},
 }
