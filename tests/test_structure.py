@@ -75,10 +75,10 @@ def imports(source: str, module: str, *, package: bool = False) -> list[Import]:
             found.extend(Import(f"{base}.{alias.name}", node.lineno, top=top, types=types) for alias in node.names)
         inside = isinstance(node, ast.FunctionDef | ast.AsyncFunctionDef | ast.Lambda)
         if isinstance(node, ast.If) and "TYPE_CHECKING" in ast.unparse(node.test):
-            for child in node.body:
-                visit(child, top, True)
-            for child in node.orelse:
-                visit(child, top, types)
+            for statement in node.body:
+                visit(statement, top, True)
+            for statement in node.orelse:
+                visit(statement, top, types)
             return
         for child in ast.iter_child_nodes(node):
             visit(child, top and not inside, types)
@@ -111,7 +111,8 @@ def arrows_back(graph: Mapping[str, set[str]]) -> list[str]:
         level = floor(start)
         if level is None:
             continue
-        queue, seen = [(start,)], {start}
+        queue: list[tuple[str, ...]] = [(start,)]
+        seen = {start}
         while queue:
             chain = queue.pop(0)
             for target in sorted(graph.get(chain[-1], ())):

@@ -294,7 +294,7 @@ def saturation_of_romps(kelvin: float, *, ice: bool) -> float:
     heat, energy = (1861.0, 2.3740e6 + 0.3337e6) if ice else (4119.0, 2.3740e6)
     power = (1418.0 + 461.0 - heat) / 461.0
     slope = (energy - (1418.0 - heat) * 273.16) / 461.0
-    return 611.65 * (kelvin / 273.16) ** power * math.exp(slope * (1.0 / 273.16 - 1.0 / kelvin))
+    return 611.65 * math.pow(kelvin / 273.16, power) * math.exp(slope * (1.0 / 273.16 - 1.0 / kelvin))
 
 
 @pytest.mark.parametrize(("kelvin", "relative", "ice", "published"), PUBLISHED_LEVELS)
