@@ -5,7 +5,6 @@ from __future__ import annotations
 import math
 from datetime import datetime
 from typing import NamedTuple
-
 from zoneinfo import ZoneInfo
 
 import numpy as np
@@ -25,7 +24,6 @@ DIVERGENCE, HEATING, MOISTENING, ANTHROPOGENIC, SENSIBLE, LATENT, FRICTION = 6, 
 CLOUD, CLOUD_BASE, LATER_WEIGHT = 13, 14, 15
 COLUMNS = 16
 
-WIND_ALOFT = (1000.0, 2000.0)  # [m] the pressure-gradient wind is read above the afternoon layer, never inside it
 
 
 class Knots(NamedTuple):
@@ -74,7 +72,7 @@ def pressure_gradient_wind(scenario: Scenario, time: Array) -> tuple[Array, Arra
     weather = scenario.weather
     speed = weather.sample("pressure_gradient_wind_m_s", time)
     from_deg = weather.sample("pressure_gradient_wind_from_deg", time)
-    own_speed, own_from = wind_near(scenario.profile, *WIND_ALOFT)
+    own_speed, own_from = wind_near(scenario.profile)
     if not weather.given("pressure_gradient_wind_m_s") and scenario.profile.wind_known:
         speed = np.full(time.shape, own_speed)
         from_deg = np.full(time.shape, own_from)

@@ -191,6 +191,17 @@ def sample(air: Aloft, level: float, sunk: float) -> Sample:
     return Sample(theta, humidity, u, v, st, sq, ct, cq)
 
 
+def origins(air: Aloft, mass: NDArray[np.float64], sunk: float) -> NDArray[np.float64]:
+    """Mass levels where the air that is now at ``mass`` (n,) came from; `_origin` for arrays."""
+    cap = air.cap
+    safe = np.maximum(mass, 1e-9)
+    above = mass + cap * sunk
+    above = np.where(above < cap, cap * np.exp(np.minimum(mass / cap - 1.0 + sunk, 50.0)), above)
+    below = mass * math.exp(sunk)
+    below = np.where(below > cap, cap * (1.0 + sunk - np.log(cap / safe)), below)
+    return np.where(mass > cap, above, below)
+
+
 def _weighted(mass: NDArray[np.float64], values: NDArray[np.float64], cap: float) -> tuple[Numbers, Numbers, Numbers]:
     """Running plain, exponential and logarithmic integrals at the levels."""
     d = np.diff(mass)

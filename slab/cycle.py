@@ -4,17 +4,18 @@ from __future__ import annotations
 
 import math
 from dataclasses import dataclass
+from typing import NamedTuple
 
 import numpy as np
 from numpy.typing import NDArray
 
-from forcing.air import KAPPA, P_REFERENCE, coriolis, each, temperature
+from forcing.air import GRAVITY, KAPPA, P_REFERENCE, coriolis, each, temperature
 from forcing.cover import ground as ground_of
 from forcing.errors import ModelError, ScenarioError
 from forcing.longwave_column import Anchor
 from forcing.scenario_types import Scenario
 from forcing.surface import Ground, soil_layers
-from forcing.table import LATENT, LATER_WEIGHT, NET_RADIATION, SENSIBLE, SHORTWAVE, Knots, knot_times, tabulate
+from forcing.table import DIVERGENCE, LATENT, LATER_WEIGHT, NET_RADIATION, SENSIBLE, SHORTWAVE, Knots, knot_times, tabulate
 from slab.column import Aloft, as_numbers, from_profile, on_same_levels
 from slab.daytime import EAST, HEAT, MASS, MEMBERS, NORTH, SOIL, SOIL_LAYERS, SURFACE_HEAT, VAPOUR, Offsets, Place
 from slab.growth import CLOSURES, Closure
@@ -27,7 +28,6 @@ from slab.start import GroundStart, first_mass, ground_start, yesterday
 
 Array = NDArray[np.float64]
 
-KNOT = 600.0  # [s] forcing is linear between knots, and long-wave is refreshed at each
 HEIGHTS = (1.5, 2.0, 9.0, 10.0)  # [m] temperatures kept beside the screen's
 STOPS = {RAN_TO_END: "end of the run", REACHED_TOP: "top of the profile reached"}
 DAY, NIGHT = "day", "night"
@@ -99,24 +99,33 @@ def closure_of(scenario: Scenario) -> Closure:
     return closure
 
 
+class Known(NamedTuple):
+    """What a run of the same profile has already found: it need not be found again."""
+
+    anchor: Anchor
+    radiative_heating: float
+    soil: GroundStart | None
+
+
 class _Stage:
     """What stays the same through a run, and the record that is being written."""
 
-    def __init__(self, scenario: Scenario, control: Control, heights: tuple[float, ...]) -> None:
+    def __init__(self, scenario: Scenario, control: Control, heights: tuple[float, ...], known: Known | None) -> None:
         profile = scenario.profile
         self.scenario, self.control, self.heights = scenario, control, heights
         self.ground = ground_of(scenario.cover, scenario.soil_moisture)
-        time = knot_times(profile.valid.timestamp(), scenario.run.hours, KNOT)
-        column = (profile.pressure, each(temperature, profile.theta, profile.pressure), profile.humidity)
-        self.heating = free_air_heating(*column)
+        time = knot_times(profile.valid.timestamp(), scenario.run.hours, control.knot)
+        if known is None:
+            column = (profile.pressure, each(temperature, profile.theta, profile.pressure), profile.humidity)
+            known = Known(anchored(profile, yesterday(scenario)[1]), free_air_heating(*column), None)
+        self.anchor, self.heating = known.anchor, known.radiative_heating
         self.knots: Knots = tabulate(scenario, time, self.heating)
-        if scenario.later is not None and np.any(self.knots.table[:, 6] != 0.0):
+        if scenario.later is not None and np.any(self.knots.table[:, DIVERGENCE] != 0.0):
             raise ScenarioError(
                 "both a later profile and a divergence are given",
                 place=scenario.source,
                 remedy="the later profile already holds the day's sinking: drop one of them",
             )
-        self.anchor = anchored(profile, yesterday(scenario)[1])
         self.place = Place(
             pressure=profile.surface_pressure,
             coriolis=coriolis(scenario.site.latitude),
@@ -136,7 +145,7 @@ class _Stage:
     def column_now(self, air: Aloft) -> tuple[Array, Array, Array]:
         """Pressure [Pa], temperature [K], humidity of a table, and of the profile above it."""
         profile = self.scenario.profile
-        pressure = profile.surface_pressure - 9.80665 * np.asarray(air.mass)
+        pressure = profile.surface_pressure - GRAVITY * np.asarray(air.mass)
         theta, humidity = np.asarray(air.theta), np.asarray(air.humidity)
         above = profile.pressure < pressure[-1] - 1.0
         p = np.concatenate((pressure, profile.pressure[above]))
@@ -199,8 +208,8 @@ def _by_night(stage: _Stage, first: int, start: Handover) -> tuple[Part, int, Ha
     table[:, LATER_WEIGHT] = weight
     sky = NightSky(*stage.column_now(start.air), stage.anchor, given=stage.knots.longwave_given)
     course = through_night(
-        first, len(stage.times) - 1, stage.knots.time, table, start, stage.ground, stage.place, sky, later,
-        stage.heights, stage.record,  # type: ignore[arg-type]
+        first, len(stage.times) - 1, stage.knots.time, table, start, stage.ground, stage.place, sky, stage.heating,
+        later, stage.heights, stage.record,  # type: ignore[arg-type]
     )  # fmt: skip
     return Part(NIGHT, first, course.reached, start.air, later, course), course.reason, course.handover
 
@@ -215,7 +224,8 @@ def _starts_by_night(stage: _Stage) -> bool:
     return bool((1.0 - stage.ground.albedo) * row[SHORTWAVE] < 60.0)
 
 
-def run(scenario: Scenario, *, control: Control = STANDARD, heights: tuple[float, ...] = HEIGHTS) -> Run:
+def run(scenario: Scenario, *, control: Control = STANDARD, heights: tuple[float, ...] = HEIGHTS,
+        known: Known | None = None, by_day: bool = False) -> Run:  # fmt: skip
     """Run a scenario through its hours.
 
     Parameters
@@ -225,6 +235,10 @@ def run(scenario: Scenario, *, control: Control = STANDARD, heights: tuple[float
         Accuracy of the day's march.
     heights : tuple of float
         Heights [m above ground] at which temperatures are kept.
+    known : Known, optional
+        Taken over from another run of the same profile; soil None is found anew.
+    by_day : bool
+        Start with the slab whatever the surface does then (cheaper, for comparing runs with each other).
 
     Raises
     ------
@@ -233,13 +247,15 @@ def run(scenario: Scenario, *, control: Control = STANDARD, heights: tuple[float
     ScenarioError
         Where inputs contradict each other.
     """
-    stage = _Stage(scenario, control, heights)
-    soil = None if stage.knots.fluxes_given else ground_start(scenario, stage.ground)
+    stage = _Stage(scenario, control, heights, known)
+    soil = known.soil if known is not None else None
+    if soil is None and not stage.knots.fluxes_given:
+        soil = ground_start(scenario, stage.ground)
     layers = soil.soil if soil is not None else (float(scenario.profile.temperature[0]),) * SOIL_LAYERS
     skin = soil.skin if soil is not None else float(scenario.profile.temperature[0])
     handover = Handover(from_profile(scenario.profile), 0.0, 0.0, layers, skin, math.nan, (0.0,) * SUMS)
     parts: list[Part] = []
-    night = _starts_by_night(stage)
+    night = not by_day and _starts_by_night(stage)
     last = len(stage.times) - 1
     first, reason = 0, EVENING
     while first < last and reason in (EVENING, MORNING):

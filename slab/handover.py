@@ -7,7 +7,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from slab.column import Aloft, mass_of, sample, tabulate
+from slab.column import Aloft, origins, sample, tabulate
 from slab.daytime import HEAT, MASS, VAPOUR, Offsets
 from slab.growth import slab_at
 from slab.night_grid import Column, Grid
@@ -47,17 +47,14 @@ class Handover:
 
 def moved(air: Aloft, later: Aloft | None, at: Offsets, mass: Array) -> tuple[Array, Array, Array, Array]:
     """Theta [K], humidity [kg kg-1] and wind [m s-1] of the air aloft now at mass levels (n,) [kg m-2]."""
-    now = [sample(air, float(m), at.sunk) for m in mass]
-    theta = np.array([s.theta for s in now])
-    humidity = np.array([s.humidity for s in now])
-    u, v = np.array([s.u for s in now]), np.array([s.v for s in now])
+    start = origins(air, mass, at.sunk)
+    values = [np.interp(start, np.asarray(air.mass), np.asarray(x)) for x in (air.theta, air.humidity, air.u, air.v)]
     if later is not None and at.later > 0.0:
-        then = [sample(later, float(m), 0.0) for m in mass]
         w = at.later
-        theta = (1.0 - w) * theta + w * np.array([s.theta for s in then])
-        humidity = (1.0 - w) * humidity + w * np.array([s.humidity for s in then])
-        u = (1.0 - w) * u + w * np.array([s.u for s in then])
-        v = (1.0 - w) * v + w * np.array([s.v for s in then])
+        then = (np.interp(mass, np.asarray(later.mass), np.asarray(x))
+                for x in (later.theta, later.humidity, later.u, later.v))  # fmt: skip
+        values = [(1.0 - w) * now + w * other for now, other in zip(values, then, strict=True)]
+    theta, humidity, u, v = values
     return theta + at.warmed, np.maximum(humidity + at.moistened, 1e-7), u, v
 
 
@@ -76,7 +73,7 @@ def column_after_slab(air: Aloft, later: Aloft | None, at: Offsets, y: list[floa
     kept = height[(height < low - 0.5) | (height > high + 0.5)]
     lid = [float(np.interp(air.cap, mass, height))] if air.cap < mass[-1] else []
     levels = np.unique(np.concatenate((kept, [0.0, low, high], lid)))
-    level_mass = np.array([mass_of(air, float(z)) for z in levels])
+    level_mass = np.interp(levels, height, mass)
     aloft = moved(air, later, at, level_mass)
     here = sample(air, y[MASS], at.sunk)
     if later is not None and at.later > 0.0:

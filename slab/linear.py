@@ -92,6 +92,6 @@ def grow(*, depth: float, jump: float, gradient: float, heat_flux: Callable[[flo
             break
         span = float(times[k + 1] - times[k])
         step, _ = advance(y, step, span, rows[k], rows[k + 1], at, air, air, place, ground, thickness, closure,
-                          control, work)  # fmt: skip
+                          control, work, False)  # fmt: skip
         at = offsets_at(at, rows[k], rows[k + 1], span, span)
     return LinearResult(*np.array(found).T)

@@ -36,10 +36,14 @@ TOP_MARGIN = 0.995  # the slab has reached the top of the profile when it holds 
 
 
 class Control(NamedTuple):
-    """Accuracy of the march: local depth tolerance [m], longest step [s], and a factor on the temperature tolerance."""
+    """Accuracy of the march: local depth tolerance [m], longest step [s], and spacing of the knots [s].
+
+    Forcing is linear between knots, and long-wave and shade are refreshed at each.
+    """
 
     depth_tolerance: float
     longest_step: float
+    knot: float = 600.0
 
 
 STANDARD = Control(0.25, 300.0)
@@ -58,10 +62,14 @@ class Work(NamedTuple):
 @kernel
 def heun_step(y: list[float], tau: float, step: float, span: float, row: Numbers, following: Numbers, start: Offsets,
               air: Aloft, later: Aloft, place: Place, ground: Ground, thickness: Numbers, closure: Closure,
-              work: Work) -> tuple[float, float]:  # fmt: skip
-    """Try one Heun step; the new state is left in ``work.ahead``. Returns local errors in depth [m] and theta [K]."""
-    tendencies(y, work.rate, tau, span, row, following, work.values, start, air, later, place, ground, thickness,
-               closure, work.memory)  # fmt: skip
+              work: Work, rate_known: bool) -> tuple[float, float]:  # fmt: skip
+    """Try one Heun step; the new state is left in ``work.ahead``. Returns local errors in depth [m] and theta [K].
+
+    ``rate_known`` says that ``work.rate`` already holds the rates at the step's start.
+    """
+    if not rate_known:
+        tendencies(y, work.rate, tau, span, row, following, work.values, start, air, later, place, ground, thickness,
+                   closure, work.memory)  # fmt: skip
     for i in range(MEMBERS):
         work.ahead[i] = y[i] + step * work.rate[i]
     settle(work.ahead, y[MASS], tau + step, span, row, following, start, air, closure)
@@ -94,8 +102,11 @@ def settle(y: list[float], least: float, tau: float, span: float, row: Numbers, 
 @kernel
 def advance(y: list[float], step: float, span: float, row: Numbers, following: Numbers, start: Offsets, air: Aloft,
             later: Aloft, place: Place, ground: Ground, thickness: Numbers, closure: Closure, control: Control,
-            work: Work) -> tuple[float, int]:  # fmt: skip
-    """March ``y`` over one span between knots; returns the next step to try and why the march ended."""
+            work: Work, rate_known: bool) -> tuple[float, int]:  # fmt: skip
+    """March ``y`` over one span between knots; returns the next step to try and why the march ended.
+
+    ``rate_known`` says that ``work.rate`` already holds the rates at the knot.
+    """
     tau = 0.0
     top = TOP_MARGIN * air.mass[len(air.mass) - 1]
     while tau < span:
@@ -103,8 +114,9 @@ def advance(y: list[float], step: float, span: float, row: Numbers, following: N
         last = wanted >= (span - tau) * 0.999
         trial = span - tau if last else wanted
         in_depth, in_theta = heun_step(
-            y, tau, trial, span, row, following, start, air, later, place, ground, thickness, closure, work
+            y, tau, trial, span, row, following, start, air, later, place, ground, thickness, closure, work, rate_known
         )
+        rate_known = True
         error = max(in_depth / control.depth_tolerance, in_theta / (THETA_TOLERANCE * control.depth_tolerance / 0.25))
         if not in_depth + in_theta < 1e9:
             error = 100.0
@@ -116,6 +128,7 @@ def advance(y: list[float], step: float, span: float, row: Numbers, following: N
         for i in range(MEMBERS):
             y[i] = work.ahead[i]
         tau = span if last else tau + trial
+        rate_known = False
         grown = trial * min(3.0, 0.9 / math.sqrt(max(error, 0.01)))
         step = max(step, grown) if last else grown
         if y[MASS] >= top:
@@ -158,7 +171,7 @@ def march(first: int, last: int, times: Numbers, rows: Sequence[list[float]], y:
         if seen_upward and downward >= 2:
             return k, EVENING, at
         step, reason = advance(y, step, span, rows[k], rows[k + 1], at, air, later, place, ground, thickness, closure,
-                               control, work)  # fmt: skip
+                               control, work, True)  # fmt: skip
         if reason != RAN_TO_END:
             return k, reason, at
         at = offsets_at(at, rows[k], rows[k + 1], span, span)

@@ -132,13 +132,14 @@ def edges_of(setup: Setup) -> Array:
     return np.concatenate(([0.0], np.asarray(grid.interface), [grid.height[-1] + 0.5 * grid.thickness[-1]]))
 
 
-def _outside(setup: Setup, values: Array, heating: Numbers, later_change: tuple[Array, ...], later_rate: float,
-             coriolis: float) -> Outside:  # fmt: skip
-    """What acts on the cells: long-wave, advection, sinking, a later profile, the pressure gradient."""
+def _outside(setup: Setup, values: Array, uniform: float, heating: Numbers, later_change: tuple[Array, ...],
+             later_rate: float, coriolis: float) -> Outside:  # fmt: skip
+    """What acts on the cells: their own long-wave in place of the free air's ``uniform`` one, advection, sinking, a
+    later profile, the pressure gradient."""
     state = setup.state
     n = len(state.theta)
     rates = [
-        np.full(n, values[HEATING]) + np.asarray(heating), np.full(n, values[MOISTENING]),
+        np.full(n, values[HEATING] - uniform) + np.asarray(heating), np.full(n, values[MOISTENING]),
         np.full(n, -coriolis * values[GEOSTROPHIC_V]), np.full(n, coriolis * values[GEOSTROPHIC_U]),
     ]  # fmt: skip
     if later_rate != 0.0:
@@ -212,11 +213,12 @@ def _note(setup: Setup, ground: Ground, drive: Drive, link: Link) -> NightNote:
 
 
 def through_night(first: int, last: int, times: Array, table: Array, start: Handover, ground: Ground, place: Place,
-                  sky: NightSky, later: Aloft | None, heights: Sequence[float], record: Sequence[list[float]],
-                  closure: str = "blend") -> NightCourse:  # fmt: skip
+                  sky: NightSky, uniform: float, later: Aloft | None, heights: Sequence[float],
+                  record: Sequence[list[float]], closure: str = "blend") -> NightCourse:  # fmt: skip
     """Carry the column from knot ``first`` until the surface feeds it from below again, or to knot ``last``.
 
-    It ends at the second knot in a row with an upward virtual flux.
+    It ends at the second knot in a row with an upward virtual flux. ``uniform`` [K s-1] is the long-wave heating that
+    the forcing table holds for the free air; the cells have their own.
 
     Raises
     ------
@@ -246,7 +248,7 @@ def through_night(first: int, last: int, times: Array, table: Array, start: Hand
             if sky.given:
                 down = float(values[LONGWAVE])
             later_rate = float(table[min(k + 1, last), LATER_WEIGHT] - table[k, LATER_WEIGHT]) / span
-            outside = _outside(setup, values, heating, change, later_rate, place.coriolis)
+            outside = _outside(setup, values, uniform, heating, change, later_rate, place.coriolis)
             drive = _drive(setup, ground, place, values, down)
             if piece == 0:
                 link = right_side(setup.method, grid, setup.foot, setup.soil, drive, outside, state, setup.work.rates,

@@ -15,7 +15,7 @@ from forcing.scenario import with_step
 from forcing.scenario_types import Assumption, Scenario
 from forcing.sun import sunrise_sunset
 from slab.cautions import complete
-from slab.cycle import Run, run
+from slab.cycle import Known, Run, run
 from slab.march import Control
 from slab.products.events import definitions_at, first_day, summary, wind_known
 from slab.products.series import DECAYING, SLAB_TOP, STRESS, iso, output_knots, series
@@ -23,7 +23,7 @@ from slab.products.sounding import wind
 from slab.rendered import profile_at
 
 SCHEMA = "daylayer/1"
-COARSE = Control(1.0, 600.0)  # accuracy of the reruns behind the effects of assumptions; both sides use it
+COARSE = Control(2.0, 900.0, 1800.0)  # accuracy of the reruns behind the effects of assumptions; both sides use it
 OLD_HOURS = 12.0
 ARCHIVE_DAYS = 14.0  # an older release is a case from the archive, not a stale input
 FAR_KM, FAR_M = 150.0, 300.0
@@ -141,22 +141,26 @@ def warnings(done: Run) -> list[str]:
 def effects(scenario: Scenario, done: Run) -> dict[str, tuple[float | None, float | None]]:
     """Change of greatest depth [m] and highest temperature [K] that each assumption's plausible step makes.
 
-    One rerun of the first day for each, at the same coarser accuracy as the base it is compared with.
+    One rerun of the first day for each, by the slab alone and with coarser steps than the forecast; the base it is
+    compared with is rerun in the same way. The ground starts as in the forecast unless the step is in the surface.
     """
     day = first_day(done)
     if day is None:
         return {}
-    hours = (done.time[day.last] - done.time[0]) / 3600.0
-    short = replace(scenario, run=replace(scenario.run, hours=max(1.0, float(hours))))
-    base = _extremes(run(short, control=COARSE))
+    hours = max(1.0, (done.time[day.last] - done.time[0]) / 3600.0)
+    known = Known(done.anchor, done.radiative_heating, done.soil_start)
+
+    def extremes(changed: Scenario, key: str) -> tuple[float, float]:
+        short = replace(changed, run=replace(changed.run, hours=hours))
+        kept = known._replace(soil=None) if key.startswith("surface.") else known
+        return _extremes(run(short, control=COARSE, heights=(), known=kept, by_day=True))
+
+    base = extremes(scenario, "")
     found = {}
     for one in scenario.assumptions:
-        if one.stepped is None:
-            continue
-        stepped = with_step(scenario, one)
-        stepped = replace(stepped, run=replace(stepped.run, hours=short.run.hours))
-        depth, warmth = _extremes(run(stepped, control=COARSE))
-        found[one.key] = (_change(depth, base[0], 0), _change(warmth, base[1], 2))
+        if one.stepped is not None:
+            depth, warmth = extremes(with_step(scenario, one), one.key)
+            found[one.key] = (_change(depth, base[0], 0), _change(warmth, base[1], 2))
     return found
 
 
