@@ -15,13 +15,13 @@ from numpy.typing import ArrayLike, NDArray
 from forcing.speed import kernel
 
 GRAVITY = 9.80665  # m s-2, standard gravity (CGPM 1901; ISO 80000-3)
-CP_DRY = 1005.0  # J kg-1 K-1, dry air at constant pressure near 0 C (Stull 1988, appendix C: 1004.67)
+CP_DRY = 1005.0  # J kg-1 K-1, dry air at constant pressure near 0 C (Stull 1988 has 1004.67, recalled)
 R_DRY = 287.05  # J kg-1 K-1 (ICAO Doc 7488: 287.05287)
 R_VAPOUR = 461.5  # J kg-1 K-1 (IAPWS-95: 461.518)
 EPSILON = R_DRY / R_VAPOUR
 KAPPA = 0.286  # R/cp of dry air, the rounded exponent of WMO practice; R_DRY/CP_DRY is 0.2856
 P_REFERENCE = 1.0e5  # Pa, reference pressure of potential temperature (WMO-No. 49)
-KARMAN = 0.4  # von Karman constant (Hogstrom 1996: 0.40 +- 0.01)
+KARMAN = 0.4  # von Karman constant (Hogstrom 1996: 0.40 +- 0.01, recalled)
 STEFAN_BOLTZMANN = 5.670374e-8  # W m-2 K-4 (CODATA 2018)
 VIRTUAL = 0.608  # 1/EPSILON - 1, for specific humidity
 OMEGA = 7.2921159e-5  # rad s-1, rotation of the Earth (GRS 80)
@@ -189,8 +189,8 @@ def density(pressure: float, temperature: float, q: float) -> float:
 def lambert_lower(z: float) -> float:
     """Lambert W, branch -1: the w <= -1 with w exp(w) = z, for z in [-1/e, 0); NaN elsewhere.
 
-    Start by the series at the branch point or the asymptotic form (Corless et al. 1996, Eqs. 4.22 and 4.19),
-    then Halley steps (their Eq. 5.9).
+    Start by the series at the branch point or the asymptotic form (Corless et al. 1996,
+    Adv. Comput. Math. 5, 329), then Halley steps.
     """
     if not (z < 0.0 and 1.0 + math.e * z >= -1.0e-15):
         return math.nan

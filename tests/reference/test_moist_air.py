@@ -290,7 +290,7 @@ PUBLISHED_LEVELS = [
 
 
 def saturation_of_romps(kelvin: float, *, ice: bool) -> float:
-    """Saturation pressure of Romps 2017, Eqs. 4 and 11, with B065."""
+    """Saturation pressure of Romps 2017 with the constants of B065."""
     heat, energy = (1861.0, 2.3740e6 + 0.3337e6) if ice else (4119.0, 2.3740e6)
     power = (1418.0 + 461.0 - heat) / 461.0
     slope = (energy - (1418.0 - heat) * 273.16) / 461.0
