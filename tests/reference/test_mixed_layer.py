@@ -174,4 +174,4 @@ def test_mass_weighting_matters() -> None:
     for closure, depth in ((ENCROACHMENT, 1412.0), (PLAIN, 1670.0)):
         done = grow(depth=0.0, jump=0.0, gradient=0.005, heat_flux=lambda t: flux, hours=8.0, closure=closure)
         assert done.depth[-1] == pytest.approx(depth, rel=5e-3)
-    assert CP_DRY == pytest.approx(1005.0)
+    assert pytest.approx(1005.0) == CP_DRY
