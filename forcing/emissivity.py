@@ -135,7 +135,7 @@ def water_path(lower: float, upper: float, temperature: float, humidity: float) 
     scaled = math.exp(PRESSURE_EXPONENT * math.log(0.5 * (lower + upper) / 101325.0))
     warmth = 273.15 / temperature
     amount = humidity * (lower - upper) / GRAVITY
-    return amount * scaled * warmth * warmth * warmth * (1.0 + SELF_BROADENING * humidity)
+    return amount * scaled * warmth**TEMPERATURE_EXPONENT * (1.0 + SELF_BROADENING * humidity)
 
 
 @kernel
