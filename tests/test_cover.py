@@ -132,6 +132,12 @@ def test_fractions_must_sum_to_one():
         cover({"short grass": 0.5, "fresh snow": 0.5})
 
 
+def test_roofs_see_the_whole_sky():
+    town = cover("compact high buildings", built_fraction=0.5, sky_view=0.3)
+    assert ground(town, 0.5).sky_view == pytest.approx(0.65)
+    assert ground(cover("short grass"), 0.5).sky_view == 1.0
+
+
 def test_soil_moisture_bounds():
     with pytest.raises(CoverError, match=r"soil_moisture 1.5"):
         ground(cover("short grass"), 1.5)

@@ -171,11 +171,21 @@ def test_calm_clear_night_stays_coupled():
 
 
 def test_rough_ground_takes_the_better_coupled_state():
-    forest = ground(cover("coniferous forest"), 0.5)
-    forest = forest._replace(skin_conductance=0.2)
-    night = {"shortwave_down": 0.0, "longwave_down": 250.0, "wind_speed": 3.0, "wind_height": 20.0, "humidity": 0.003}
-    cold = balance(forest, **night, guess_skin=270.0, guess_inverse_obukhov=0.2)
-    warm = balance(forest, **night, guess_skin=297.0, guess_inverse_obukhov=1e-4)
+    """Here a skin at 273 K, decoupled, would balance as well; which one is found must not hang on the guess."""
+    forest = ground(cover("coniferous forest"), 0.5)._replace(skin_conductance=2.0)
+    night = {
+        "shortwave_down": 0.0,
+        "longwave_down": 220.0,
+        "air_temperature": 290.0,
+        "humidity": 0.004,
+        "soil_temperature": 290.0,
+        "wind_speed": 5.0,
+        "wind_height": 20.0,
+        "depth": 200.0,
+    }
+    warm = balance(forest, **night, guess_skin=290.0, guess_inverse_obukhov=1e-4)
+    cold = balance(forest, **night, guess_skin=265.0, guess_inverse_obukhov=0.12)
+    assert warm.skin_temperature > 285.0
     assert cold == pytest.approx(warm, rel=1e-8)
 
 
