@@ -19,7 +19,6 @@ from forcing.soil import layer_thicknesses
 from forcing.surface import Ground, surface_resistance
 from slab.night_answers import (
     CROSSING_HEIGHT,
-    DRY_ADIABATIC,
     REGIMES,
     flux_needed,
     fog_depth,
@@ -365,9 +364,7 @@ def observe(setup: Setup, ground: Ground, options: NightOptions, drive: Drive, o
     link = right_side(setup.method, grid, foot, setup.soil, drive, outside, state, work.rates, work, True)
     rough = (ground.roughness_momentum, ground.roughness_heat)
     crossing = read_air(grid, foot, state, link, *rough, CROSSING_HEIGHT)
-    needed = flux_needed(
-        setup.method.boundary, foot, drive, link, crossing.temperature + DRY_ADIABATIC * CROSSING_HEIGHT
-    )
+    needed = flux_needed(setup.method.boundary, foot, link)
     possible = largest_flux(crossing.wind, CROSSING_HEIGHT, setup.log_ratio, state.theta[0], foot.density)
     return {
         "seconds": now,

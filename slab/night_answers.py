@@ -8,11 +8,11 @@ from __future__ import annotations
 import math
 from typing import NamedTuple
 
-from forcing.air import CP_DRY, GRAVITY, KAPPA, KARMAN, P_REFERENCE, STEFAN_BOLTZMANN, ZERO_CELSIUS, saturation_humidity
+from forcing.air import CP_DRY, GRAVITY, KAPPA, KARMAN, P_REFERENCE, ZERO_CELSIUS, saturation_humidity
 from forcing.similarity import heat_span, momentum_span
 from forcing.speed import kernel
 from slab.night_grid import Column, Grid, Numbers
-from slab.night_surface import ENERGY, Drive, Footing, Link
+from slab.night_surface import ENERGY, Footing, Link
 
 STRESS_SHARE = (
     0.05  # depth: where stress falls to this share of the surface value, divided by 1 - share (Beare et al. 2006)
@@ -154,16 +154,15 @@ def minimum_wind(needed: float, height: float, log_ratio: float, theta: float, d
 
 
 @kernel
-def flux_needed(boundary: int, foot: Footing, drive: Drive, ground: Link, air_temperature: float) -> float:
-    """Downward heat flux [W m-2] that would keep the skin at the air's temperature (brought down adiabatically).
+def flux_needed(boundary: int, foot: Footing, ground: Link) -> float:
+    """Downward heat flux [W m-2] that the skin asks for: net radiative loss less heat from the soil, at present.
 
-    The net loss of a skin that warm (isothermal net radiation) less what the soil gives now; with other boundaries than the
-    energy balance the flux there is.
+    As Van de Wiel et al. (2012) use it (recalled). A skin kept as warm as the air by mixing would lose more, so that this is
+    a lower bound once the skin has gone cold. With other boundaries than the energy balance: the flux there is.
     """
     if boundary != ENERGY:
         return max(0.0, -CP_DRY * foot.exner * ground.heat)
-    emitted = foot.emissivity * STEFAN_BOLTZMANN * air_temperature * air_temperature * air_temperature * air_temperature
-    return max(0.0, emitted - foot.emissivity * drive.longwave_down - drive.absorbed + ground.ground)
+    return max(0.0, ground.ground - ground.net_radiation)
 
 
 @kernel

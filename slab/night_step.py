@@ -19,6 +19,7 @@ from slab.night_terms import Method, Outside, Soil, Work, right_side
 
 GAMMA = 1.0 + 1.0 / math.sqrt(2.0)
 TOTALS = ("heat", "vapour", "net_radiation", "sensible", "latent", "ground", "steps", "rejected")
+NET_RADIATION, GROUND = 2, 5  # members of the totals that stay unknown where fluxes are prescribed
 
 
 @kernel
@@ -133,16 +134,11 @@ def _add_fluxes(
     boundary: int, h: float, gh: float, foot: Footing, here: Link, there: Link, work: Work, totals: Numbers
 ) -> None:
     """Add the time integrals of the surface fluxes over a step, in the same combination as the state."""
-    if boundary == FLUX:
-        totals[0] += h * here.heat
-        totals[1] += h * here.vapour
-        totals[3] += h * CP_DRY * foot.exner * here.heat
-        totals[4] += h * here.latent_heat * here.vapour
-        return
     one = _flux_stage(gh, foot, here, here, work.first)
     two = _flux_stage(gh, foot, here, there, work.second)
     for k in range(6):
-        totals[k] += h * (0.5 * one[k] + 0.5 * two[k])
+        if boundary != FLUX or (k != NET_RADIATION and k != GROUND):
+            totals[k] += h * (0.5 * one[k] + 0.5 * two[k])
 
 
 @kernel

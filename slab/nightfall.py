@@ -36,7 +36,6 @@ from slab.march import EVENING, RAN_TO_END
 from slab.night import NightOptions, NightStart, Setup, prepare
 from slab.night_answers import (
     CROSSING_HEIGHT,
-    DRY_ADIABATIC,
     flux_needed,
     fog_depth,
     friction_velocity,
@@ -202,8 +201,7 @@ def _write(record: list[float], setup: Setup, ground: Ground, drive: Drive, valu
 def _note(setup: Setup, ground: Ground, drive: Drive, link: Link) -> NightNote:
     grid, foot, state = setup.grid, setup.foot, setup.state
     crossing = read_air(grid, foot, state, link, ground.roughness_momentum, ground.roughness_heat, CROSSING_HEIGHT)
-    warm = crossing.temperature + DRY_ADIABATIC * CROSSING_HEIGHT
-    needed = flux_needed(setup.method.boundary, foot, drive, link, warm)
+    needed = flux_needed(setup.method.boundary, foot, link)
     possible = largest_flux(crossing.wind, CROSSING_HEIGHT, setup.log_ratio, state.theta[0], foot.density)
     least = minimum_wind(needed, CROSSING_HEIGHT, setup.log_ratio, state.theta[0], foot.density)
     return NightNote(
