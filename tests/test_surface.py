@@ -78,7 +78,7 @@ def weather(draw):
     }
 
 
-@settings(max_examples=300, deadline=None)
+@settings(max_examples=120, deadline=None)
 @given(weather())
 def test_balance_closes_and_all_is_finite(case):
     one, values = case
@@ -89,7 +89,7 @@ def test_balance_closes_and_all_is_finite(case):
     assert found.aerodynamic_resistance > 0.0
 
 
-@settings(max_examples=300, deadline=None)
+@settings(max_examples=120, deadline=None)
 @given(weather(), st.floats(-8.0, 20.0), st.floats(-0.3, 0.3))
 def test_answer_does_not_hang_on_the_guess(case, warmer, x):
     one, values = case
@@ -101,7 +101,7 @@ def test_answer_does_not_hang_on_the_guess(case, warmer, x):
         assert b == pytest.approx(a, rel=1e-7, abs=1e-8)
 
 
-@settings(max_examples=200, deadline=None)
+@settings(max_examples=80, deadline=None)
 @given(weather())
 def test_stability_is_consistent_with_the_fluxes(case):
     """1/L is -k B / u*^3 with the buoyancy flux of the fluxes returned, where it is not held."""
