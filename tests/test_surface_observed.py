@@ -7,9 +7,9 @@ import math
 import sys
 from pathlib import Path
 
+import observed
 import pytest
 
-import observed
 from forcing.surface import energy_balance, energy_balance_net
 
 _PATH = Path(__file__).resolve().parent / "bench" / "flux_sites.py"
