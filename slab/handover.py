@@ -14,6 +14,8 @@ from slab.night_grid import Column, Grid
 
 Array = NDArray[np.float64]
 
+SHARP = 0.01  # [m] half the thickness in which a sharp slab top is drawn
+
 
 @dataclass(frozen=True, slots=True)
 class Handover:
@@ -63,14 +65,14 @@ def column_after_slab(air: Aloft, later: Aloft | None, at: Offsets, y: list[floa
     """The column under and above a slab of state ``y`` as one table; also the heat and vapour the table leaves out.
 
     ``softened`` draws the jump as an entrainment zone a quarter of the depth thick (for comparing with soundings),
-    else it is as sharp as the table allows (a metre).
+    else it is as sharp as the table allows (a few centimetres).
     """
     mass = np.asarray(air.mass)
     height = np.asarray(air.height)
     top = float(np.interp(y[MASS], mass, height))
-    half = 0.125 * top if softened else 0.5
+    half = 0.125 * top if softened else SHARP
     low, high = top - half, min(top + half, float(height[-1]))
-    kept = height[(height < low - 0.5) | (height > high + 0.5)]
+    kept = height[(height < low - SHARP) | (height > high + SHARP)]
     lid = [float(np.interp(air.cap, mass, height))] if air.cap < mass[-1] else []
     levels = np.unique(np.concatenate((kept, [0.0, low, high], lid)))
     level_mass = np.interp(levels, height, mass)

@@ -34,7 +34,7 @@ def profile_at(run: Run, knot: int, *, softened: bool = True) -> Profile:
     Parameters
     ----------
     softened : bool
-        False draws the slab's top as sharp as the table allows (a metre), which keeps heat and vapour exactly.
+        False draws the slab's top as sharp as the table allows (a few centimetres), which keeps heat and vapour exactly.
     """
     part = part_at(run, knot)
     at = offsets_of(run, knot)
