@@ -28,9 +28,10 @@ from forcing.table import (
     NET_RADIATION,
     SENSIBLE,
     SHORTWAVE,
+    WIND_10M,
 )
 from slab.column import Aloft, mass_of, sample
-from slab.daytime import Offsets, Place, offsets_at
+from slab.daytime import SURFACE_LAYER, Offsets, Place, offsets_at
 from slab.handover import Handover, column_after_night, moved
 from slab.march import EVENING, RAN_TO_END
 from slab.night import NightOptions, NightStart, Setup, prepare
@@ -60,6 +61,8 @@ Array = NDArray[np.float64]
 CHUNK = 300.0  # [s] long-wave and forcing are held this long (NIGHT column: half of it changes a night by under 0.02 K)
 COLUMN_TOP = 2000.0  # [m]
 MAST = 10.0  # [m]
+FADES = 4.0 * MAST  # [m]
+RELAXATION = 900.0  # [s] three chunks, so that forcing held through a chunk does not overshoot
 MORNING = EVENING + 1
 
 
@@ -105,24 +108,27 @@ def begin(start: Handover, ground: Ground, place: Place, closure: str) -> Setup:
     mass = np.array([mass_of(air, float(z)) for z in edges_of(setup)])
     held = [sample(air, float(m), 0.0) for m in mass]
     cells = np.diff(mass)
+    foot_of_wind = MAST if math.isnan(start.residual_top) else max(SURFACE_LAYER * start.residual_top, MAST)
     theta = np.diff([s.sum_theta for s in held]) / cells + start.heat / mass[-1]
     humidity = np.diff([s.sum_humidity for s in held]) / cells + start.vapour / mass[-1]
     for i in range(len(cells)):
         grid.mass[i] = float(cells[i])
         state.theta[i] = float(theta[i])
         state.humidity[i] = float(humidity[i])
-        calm = _below_mast(float(grid.height[i]), ground.roughness_momentum)
+        calm = _below(foot_of_wind, float(grid.height[i]), ground.roughness_momentum)
         state.u[i] *= calm
         state.v[i] *= calm
     return setup
 
 
-def _below_mast(height: float, roughness: float) -> float:
-    """Share of the 10 m wind that the lowest cells start with, by the neutral logarithmic law: a profile's first wind
-    is read at 10 m and a slab's wind holds above its surface layer."""
-    if height >= MAST:
+def _below(top: float, height: float, roughness: float) -> float:
+    """Share of the wind at ``top`` [m] that cells below it start with, by the neutral logarithmic law.
+
+    A profile's first wind is read at 10 m; a slab's wind holds at the top of its surface layer.
+    """
+    if height >= top:
         return 1.0
-    return math.log((height + roughness) / roughness) / math.log((MAST + roughness) / roughness)
+    return math.log((height + roughness) / roughness) / math.log((top + roughness) / roughness)
 
 
 def edges_of(setup: Setup) -> Array:
@@ -131,15 +137,29 @@ def edges_of(setup: Setup) -> Array:
     return np.concatenate(([0.0], np.asarray(grid.interface), [grid.height[-1] + 0.5 * grid.thickness[-1]]))
 
 
-def _outside(setup: Setup, values: Array, uniform: float, heating: Numbers, later_change: tuple[Array, ...],
-             later_rate: float, coriolis: float) -> Outside:  # fmt: skip
+def _toward_measured(setup: Setup, measured: float) -> Array:
+    """Rate [s-1] at which the lowest cells' wind is scaled so that it comes to the one ``measured`` at 10 m [m s-1].
+
+    Relaxation toward a measurement (Hoke & Anthes 1976), in full up to the mast and fading to nothing at four times its
+    height; the direction stays the column's own.
+    """
+    height = np.asarray(setup.grid.height)
+    wind = float(np.interp(math.log(MAST), np.log(height), np.hypot(setup.state.u, setup.state.v)))
+    share = np.clip((FADES - height) / (FADES - MAST), 0.0, 1.0)
+    return share * (min(max(measured / max(wind, 0.2), 0.2), 5.0) - 1.0) / RELAXATION
+
+
+def _outside(setup: Setup, place: Place, values: Array, uniform: float, heating: Numbers,
+             later_change: tuple[Array, ...], later_rate: float) -> Outside:  # fmt: skip
     """What acts on the cells: their own long-wave in place of the free air's ``uniform`` one, advection, sinking, a
-    later profile, the pressure gradient."""
+    later profile, the pressure gradient, a measured wind."""
     state = setup.state
-    n = len(state.theta)
+    n, coriolis = len(state.theta), place.coriolis
+    scaling = _toward_measured(setup, float(values[WIND_10M])) if place.wind_given > 0.0 else np.zeros(n)
     rates = [
         np.full(n, values[HEATING] - uniform) + np.asarray(heating), np.full(n, values[MOISTENING]),
-        np.full(n, -coriolis * values[GEOSTROPHIC_V]), np.full(n, coriolis * values[GEOSTROPHIC_U]),
+        -coriolis * values[GEOSTROPHIC_V] + scaling * np.asarray(state.u),
+        coriolis * values[GEOSTROPHIC_U] + scaling * np.asarray(state.v),
     ]  # fmt: skip
     if later_rate != 0.0:
         rates = [rate + later_rate * change for rate, change in zip(rates, later_change, strict=True)]
@@ -246,7 +266,7 @@ def through_night(first: int, last: int, times: Array, table: Array, start: Hand
             if sky.given:
                 down = float(values[LONGWAVE])
             later_rate = float(table[min(k + 1, last), LATER_WEIGHT] - table[k, LATER_WEIGHT]) / span
-            outside = _outside(setup, values, uniform, heating, change, later_rate, place.coriolis)
+            outside = _outside(setup, place, values, uniform, heating, change, later_rate)
             drive = _drive(setup, ground, place, values, down)
             if piece == 0:
                 link = right_side(setup.method, grid, setup.foot, setup.soil, drive, outside, state, setup.work.rates,
