@@ -11,6 +11,7 @@ from slab.wording import METRIC, Clock, Units
 __all__ = ["complete", "forecast_cautions"]
 
 Document = Mapping[str, Any]
+FEW = 5  # assumed inputs that are named in a caution; more are counted
 
 
 def complete(document: Document, units: Units = METRIC) -> list[dict[str, str]]:
@@ -88,4 +89,6 @@ def _repairs(document: Document) -> str:
     text = "; ".join(f"{item['name']} {item['count']}" for item in repairs) or "none"
     assumed = [item["name"] for item in document.get("assumptions") or [] if item.get("source") == "assumed"]
     tail = f" Assumed, not observed: {', '.join(assumed)}." if assumed else ""
+    if len(assumed) > FEW:
+        tail = f" {len(assumed)} inputs are assumed, not observed; they are listed with the result."
     return f"Input repairs: {text}.{tail}"

@@ -46,8 +46,11 @@ def write_atomically(path: str | os.PathLike[str], content: str | bytes) -> None
     try:
         if target.is_dir():
             raise IsADirectoryError(21, "is a folder")
-        temporary.write_bytes(data)
-        temporary.replace(target)
+        if target.exists() and not target.is_file():
+            target.write_bytes(data)  # a device or a pipe: renaming over it would replace it
+        else:
+            temporary.write_bytes(data)
+            temporary.replace(target.resolve())
     except OSError as error:
         raise DaylayerError(
             f"cannot be written ({error.strerror or error})",

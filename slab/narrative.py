@@ -3,11 +3,12 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
+from datetime import datetime
 from typing import Any
 
 from slab.wording import UNKNOWN, Clock, Units, compass
 
-__all__ = ["cumulus_words", "day_sentences", "headline"]
+__all__ = ["change_words", "cumulus_words", "day_sentences", "headline", "most_telling", "telling_sentence"]
 
 Document = Mapping[str, Any]
 
@@ -34,7 +35,7 @@ def day_sentences(document: Document, units: Units) -> list[str]:
     summary, clock = document["summary"], Clock.of(document)
     elevation = document["site"].get("elevation_m")
     sentences = [
-        _depth(summary, clock, units, elevation),
+        _depth(summary, clock, units, elevation) + _later_day(document, clock, units),
         _temperature(summary, clock, units),
         _breakup(document, clock, units),
         _capital(cumulus_words(document, units)) + ".",
@@ -54,6 +55,50 @@ def day_sentences(document: Document, units: Units) -> list[str]:
             f"Near the ground the air is {units.difference(excess)} warmer than the mixed layer (superadiabatic excess)."
         )
     return sentences
+
+
+def most_telling(document: Document) -> list[Document]:
+    """Assumed inputs with a computed change, the largest change of depth first."""
+    items = [item for item in document.get("assumptions") or [] if item.get("effect_on_depth_m") is not None]
+    return sorted(items, key=lambda item: -abs(float(item["effect_on_depth_m"])))
+
+
+def telling_sentence(document: Document, units: Units) -> str:
+    """Which assumed input would change the depth most; empty where no step was computed."""
+    telling = most_telling(document)
+    if not telling or not telling[0]["effect_on_depth_m"]:
+        return ""
+    return f"What would change the depth most: {telling[0]['name']} ({change_words(telling[0], units)})."
+
+
+def change_words(item: Document, units: Units) -> str:
+    """What the step in an assumed input changes: greatest depth, then highest temperature; empty where not computed."""
+    depth, warm = item.get("effect_on_depth_m"), item.get("effect_on_max_temperature_K")
+    changes = [
+        *([units.height_change(depth)] if depth is not None else []),
+        *([units.difference(warm, signed=True)] if warm is not None else []),
+    ]
+    return f"{item.get('step') or 'one step'}: {', '.join(changes)}" if changes else ""
+
+
+def _later_day(document: Document, clock: Clock, units: Units) -> str:
+    """The greatest depth of the days after the one the summary speaks of."""
+    said = document["summary"].get("mixing_depth_max_time")
+    if said is None:
+        return ""
+    first = clock.local(datetime.fromisoformat(said)).date()
+    later: dict[Any, tuple[float, str]] = {}
+    series = document["series"]
+    for time, depth, regime in zip(series["time"], series["mixing_depth_m"], series["regime"], strict=True):
+        day = clock.local(datetime.fromisoformat(time)).date()
+        if (
+            depth is not None
+            and regime in {"mixed", "decaying"}
+            and day > first
+            and depth > later.get(day, (0.0, ""))[0]
+        ):
+            later[day] = (depth, time)
+    return "".join(f" Later {units.height(depth)} at {clock.say(time)}." for depth, time in later.values())
 
 
 def _depth(summary: Document, clock: Clock, units: Units, elevation: float | None) -> str:

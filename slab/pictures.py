@@ -16,7 +16,7 @@ from matplotlib.ticker import MaxNLocator
 from forcing.errors import DaylayerError
 from slab.cautions import complete
 from slab.export import write_atomically
-from slab.narrative import day_sentences, headline
+from slab.narrative import change_words, day_sentences, headline, most_telling
 from slab.pictures_layers import day_layers, draw_layers, hours_from_start
 from slab.pictures_strips import draw_fluxes, draw_profiles, draw_temperature, label_hours
 from slab.pictures_style import LARGE, LINE, PAGE, PLAIN, SMALL, Placer, Ruler
@@ -201,10 +201,14 @@ def _inputs(document: Document, units: Units, ruler: Ruler, width: float) -> Lin
         if items:
             lines.append((heading, True))
             lines += [(line, False) for item in items for line in ruler.wrap(item, width, indent="   ")]
-    stepped = [item for item in document.get("assumptions") or [] if item.get("source") == "assumed"]
-    if stepped:
+    assumed = [item for item in document.get("assumptions") or [] if item.get("source") == "assumed"]
+    if assumed:
         lines.append(("assumed (a step: change of greatest depth, highest temperature)", True))
-        lines += [(line, False) for item in stepped for line in ruler.wrap(_assumed(item, units), width, indent="   ")]
+        telling = [item for item in most_telling(document) if item in assumed]
+        words = [f"{item['name']} {item['value']} ({change_words(item, units)})" for item in telling]
+        rest = [str(item["name"]) for item in assumed if item not in telling]
+        words += [f"no step computed: {', '.join(rest)}"] if rest else []
+        lines += [(line, False) for text in words for line in ruler.wrap(text, width, indent="   ")]
     for source in ("given", "observed"):
         known = [
             f"{item['name']} {item['value']}"
@@ -215,18 +219,6 @@ def _inputs(document: Document, units: Units, ruler: Ruler, width: float) -> Lin
             lines.append((source, True))
             lines += [(line, False) for line in ruler.wrap("; ".join(known), width, indent="   ")]
     return lines
-
-
-def _assumed(item: Document, units: Units) -> str:
-    depth, warm = item.get("effect_on_depth_m"), item.get("effect_on_max_temperature_K")
-    changes = [
-        *([units.height_change(depth)] if depth is not None else []),
-        *([units.difference(warm, signed=True)] if warm is not None else []),
-    ]
-    text = f"{item['name']} {item['value']}"
-    if changes:
-        return f"{text} ({item.get('step') or 'a step'}: {', '.join(changes)})"
-    return f"{text} ({item['why']})" if item.get("why") else text
 
 
 def _cut(lines: Lines, rows: int) -> Lines:

@@ -36,9 +36,12 @@ def draw_temperature(axes: Axes, document: Document, units: Units, placer: Place
         [("temperature", "#8c2d04", None), ("dew point", "#08519c", (4, 1.5))],
         placer,
     )
-    if not np.all(np.isnan(warm)):
-        for n, lift in ((int(np.nanargmax(warm)), 1.0), (int(np.nanargmin(warm)), -1.0)):
-            _figure_at(axes, hours[n], warm[n], units, lift, placer)
+    summary = document["summary"]
+    for which, lift in (("max", 1.0), ("min", -1.0)):
+        value, when = summary.get(f"temperature_2m_{which}_C"), summary.get(f"temperature_2m_{which}_time")
+        if value is not None and when is not None:
+            at = float(hours_from_start(document, when))
+            _figure_at(axes, at, units.temperature_value(value), units, lift, placer)
 
 
 def _display(values: Array, units: Units) -> Array:
@@ -78,12 +81,12 @@ def draw_fluxes(axes: Axes, document: Document, placer: Placer) -> None:
             floor = np.where(np.isnan(roof), floor, roof)
     net = column(document, "net_radiation_W_m2")
     axes.plot(hours, net, color="black", linewidth=1.2, dashes=(3, 1.2), label="net radiation")
-    axes.axhline(0.0, color="black", linewidth=0.6)
+    axes.plot([0.0, hours[-1]], [0.0, 0.0], color="black", linewidth=0.6)
     low, high = axes.get_ylim()
     axes.set_ylim(min(low, -0.25 * high), max(1.1 * high, 50.0))
-    keys: list[Key] = [
-        ("net radiation (down)", "black", (3, 1.2)),
-        *((f"{name}", FLUXES[name], None) for name in reversed(parts)),
+    keys: list[Any] = [
+        *([] if np.all(np.isnan(net)) else [("net radiation (down)", "black", (3, 1.2))]),
+        *((name, FLUXES[name], None) for name in reversed(parts) if not np.all(np.isnan(parts[name]))),
     ]
     _gutter_words(axes, "W/m², away from the surface", keys, placer, wide=True)
 

@@ -30,9 +30,18 @@ def test_no_word_of_permission_and_no_bulletin_capitals(case: str, units: str) -
 
 def test_assumptions_stand_above_the_result_with_what_a_step_changes() -> None:
     text = forecast_text(sample())
-    assert text.index("soil moisture") < text.index("The mixed layer reaches")
-    line = next(line for line in text.splitlines() if line.strip().startswith("soil moisture"))
-    assert "+0.20: -210 m, -1.3 K" in line
+    assert text.index("soil moisture: 0.40 (middle of the range)") < text.index("The mixed layer reaches")
+    lines = text.splitlines()
+    n = next(n for n, line in enumerate(lines) if line.strip().startswith("soil moisture"))
+    assert lines[n + 1].strip() == "+0.20: -210 m, -1.3 K"
+    assert "What would change the depth most: soil moisture (+0.20: -210 m, -1.3 K)." in " ".join(text.split())
+
+
+def test_a_second_day_is_told_after_the_first() -> None:
+    assert "by the slab top. Later 1850 m at 17:00 on Wed 15 Jul local (23:00 UTC)." in " ".join(
+        forecast_text(sample()).split()
+    )
+    assert "Later" not in forecast_text(sample(hours=12))
 
 
 def test_the_day_is_told_in_order_before_the_table() -> None:

@@ -8,7 +8,7 @@ from datetime import datetime
 from typing import Any
 
 from slab.cautions import complete
-from slab.narrative import day_sentences
+from slab.narrative import change_words, day_sentences, telling_sentence
 from slab.products.forecast_table import blocks, hourly_table, roughness_of
 from slab.wording import US, Clock, Units, units_named
 
@@ -37,7 +37,7 @@ def forecast_text(document: Document, units: str = "metric") -> str:
     sections = [
         _heading(document, chosen),
         _assumptions(document, chosen),
-        _wrapped(day_sentences(document, chosen)),
+        _wrapped([*day_sentences(document, chosen), telling_sentence(document, chosen)]),
         ["by blocks of hours (temperature and humidity as five-unit ranges)", *_indented(blocks(document))]
         if chosen is US
         else [],
@@ -108,7 +108,7 @@ def _assumptions(document: Document, units: Units) -> list[str]:
     items = document.get("assumptions") or []
     if not items:
         return []
-    lines = []
+    lines: list[str] = []
     headings = (
         (
             "assumed",
@@ -117,35 +117,16 @@ def _assumptions(document: Document, units: Units) -> list[str]:
         ("given", "given by the user"),
         ("observed", "observed"),
     )
-    width = max(len(str(item["name"])) for item in items)
-    values = min(max(len(str(item["value"])) for item in items), 24)
     for source, heading in headings:
         chosen = [item for item in items if item.get("source") == source]
-        if not chosen:
-            continue
-        lines.append(heading)
+        if chosen:
+            lines.append(heading)
         for item in chosen:
-            text = f"{item['name']:<{width}}  {item['value']!s:<{values}}  {_effect(item, units)}".rstrip()
-            lines += textwrap.wrap(
-                text, WIDTH, initial_indent="  ", subsequent_indent=" " * (width + values + 6), drop_whitespace=True,
-                replace_whitespace=False,
-            )  # fmt: skip
+            why = f" ({item['why']})" if item.get("why") else ""
+            lines += _wrapped([f"{item['name']}: {item['value']}{why}"], "  ")
+            step = change_words(item, units) if source == "assumed" else ""
+            lines += _wrapped([step], "      ") if step else []
     return lines
-
-
-def _effect(item: Document, units: Units) -> str:
-    why = str(item.get("why") or "")
-    if item.get("source") != "assumed":
-        return why
-    depth, warm = item.get("effect_on_depth_m"), item.get("effect_on_max_temperature_K")
-    changes = [
-        *([units.height_change(depth)] if depth is not None else []),
-        *([units.difference(warm, signed=True)] if warm is not None else []),
-    ]
-    if not changes:
-        step = f"{item['step']} not computed" if item.get("step") else ""
-        return "; ".join(part for part in (step, why) if part)
-    return f"{item.get('step') or 'one step'}: {', '.join(changes)}" + (f"; {why}" if why else "")
 
 
 def _table_title(document: Document, units: Units) -> list[str]:
