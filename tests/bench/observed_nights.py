@@ -94,7 +94,9 @@ def nights(folder: Path) -> list[Night]:
     ]  # fmt: skip
 
 
-def guessed_cloud(profile: Profile, *, critical_humidity: float, deep_m: float, highest_m: float) -> tuple[float, float]:
+def guessed_cloud(
+    profile: Profile, *, critical_humidity: float, deep_m: float, highest_m: float
+) -> tuple[float, float]:
     """Cloud fraction and base [m] guessed from an afternoon's humidity; the rule stands in the file of constants."""
     humidity = each(relative_humidity, profile.temperature, profile.humidity, profile.pressure)
     z = np.arange(0.0, highest_m + 1.0, LAST_GRID_METRE)
@@ -206,7 +208,10 @@ def main() -> int:
     computed = [read_run(run(case), night) for case, night in zip(cases, all_nights, strict=True)]
     measured = [read(night.dawn.height, night.dawn.temperature, night.surface) for night in all_nights]
     clouds = [float(case.weather.constants["cloud_fraction"]) for case in cases]
-    gaps = [(a.tables.top - n.told_top, a.tables.strength - n.told_strength) for a, n in zip(measured, all_nights, strict=True)]
+    gaps = [
+        (a.tables.top - n.told_top, a.tables.strength - n.told_strength)
+        for a, n in zip(measured, all_nights, strict=True)
+    ]
     print(f"one date, 21-22 May 2023, {len(all_nights)} stations under one weather: not a climate of nights")
     print(f"given: afternoon sounding; {given['surface']}; cloud by rule {given['cloud']}; everything else by default")
     print(f"night_pairs.csv from the measured dawns by the tables' rule: largest difference of top "
