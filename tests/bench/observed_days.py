@@ -249,7 +249,9 @@ def main() -> int:
     if not folder.is_dir():
         print(f"observed test days are not at {folder}; set DAYLAYER_OBSERVED", file=sys.stderr)
         return 1
-    print("fluxes as in the tables, no advection or sinking; depth with the default closure, without wind, and by encroachment")
+    print(
+        "fluxes as in the tables, no advection or sinking; depth with the default closure, without wind, and by encroachment"
+    )
     held, asked = 0, 0
     for case in CASES:
         print(f"\n{case.name}; clock {case.clock}")

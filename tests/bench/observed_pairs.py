@@ -282,7 +282,9 @@ def main() -> int:
         return 1
     pairs = read_pairs(observed_folder())
     for choice in _rows(HERE / "observed_pairs.csv"):
-        print(f"{choice['station']}: {choice['cover']}, soil moisture {choice['soil_moisture']}, cloud {choice['cloud_fraction']}; {choice['why']}")
+        print(
+            f"{choice['station']}: {choice['cover']}, soil moisture {choice['soil_moisture']}, cloud {choice['cloud_fraction']}; {choice['why']}"
+        )
     runs = {closure: [predict(pair, entrainment=closure) for pair in pairs] for closure in CLOSURES}
     answers = {closure: [one.state for one in found] for closure, found in runs.items()}
     if asked.later:
