@@ -24,8 +24,9 @@ from forcing.ground import pressure_by_theta
 from forcing.profile import Profile
 from forcing.speed import COMPILED, kernel
 
-FINE_STEP = 25.0  # [m] finest table step; linear in height and linear in mass then differ by less than 1e-4 K
-TABLE_TOP = 7000.0  # [m] above ground; a mixed layer on land is not seen deeper (DESIGN of depths: C040 several km)
+FINE_STEP = 25.0  # [m] table step in the lowest kilometres; linear in height and in mass then differ by under 1e-4 K
+COARSE_STEP, COARSE_FROM = 100.0, 4000.0  # [m] the step higher up
+TABLE_TOP = 12000.0  # [m] above ground; leaves room for air that sinks for days
 SINKING_CAP_HEIGHT = 2000.0  # [m] sinking grows linearly up to here, then is constant
 
 Numbers = Sequence[float]
@@ -207,9 +208,10 @@ def _weighted(mass: NDArray[np.float64], values: NDArray[np.float64], cap: float
     d = np.diff(mass)
     slope = np.diff(values) / d
     total = np.concatenate(([0.0], np.cumsum(d * 0.5 * (values[1:] + values[:-1]))))
-    weight = np.where(mass >= cap, np.exp(np.minimum((mass - cap) / cap, 50.0)), 0.0)
+    over = mass >= cap * (1.0 - 1e-9)  # a level that stands for the cap may miss it by rounding
+    weight = np.where(over, np.exp(np.minimum((mass - cap) / cap, 50.0)), 0.0)
     piece = cap * (weight[1:] * values[1:] - weight[:-1] * values[:-1]) - cap * cap * slope * np.diff(weight)
-    exps = np.concatenate(([0.0], np.cumsum(np.where(mass[:-1] >= cap, piece, 0.0))))
+    exps = np.concatenate(([0.0], np.cumsum(np.where(over[:-1], piece, 0.0))))
     inner = np.zeros_like(d)
     base = values[1:-1] - slope[1:] * mass[1:-1]
     inner[1:] = cap * (base * np.log(mass[2:] / mass[1:-1]) + slope[1:] * d[1:])
@@ -233,15 +235,19 @@ def tabulate(mass: NDArray[np.float64], height: NDArray[np.float64], theta: NDAr
     return Aloft(*plain, st, sq, et, eq, lt, lq, cap)
 
 
+def distinct(levels: NDArray[np.float64]) -> NDArray[np.float64]:
+    """Increasing levels without those that repeat the one below to within a thousandth (m or kg m-2)."""
+    return np.asarray(levels[np.concatenate(([True], np.diff(levels) > 1e-3))])
+
+
 def from_profile(profile: Profile) -> Aloft:
     """Tabulate a measured profile up to 7 km or its own top."""
     top = min(float(profile.height[-1]), TABLE_TOP)
-    even = np.arange(0.0, top, FINE_STEP)
+    even = np.concatenate((np.arange(0.0, min(top, COARSE_FROM), FINE_STEP), np.arange(COARSE_FROM, top, COARSE_STEP)))
     levels = np.unique(np.concatenate((even, profile.height[profile.height <= top], [top])))
     if top > SINKING_CAP_HEIGHT:
         levels = np.unique(np.append(levels, SINKING_CAP_HEIGHT))
-    keep = np.concatenate(([True], np.diff(levels) > 1e-3))
-    levels = levels[keep]
+    levels = distinct(levels)
     theta, humidity, u, v = (
         np.interp(levels, profile.height, x) for x in (profile.theta, profile.humidity, profile.u, profile.v)
     )

@@ -7,7 +7,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from slab.column import Aloft, origins, sample, tabulate
+from slab.column import Aloft, distinct, origins, sample, tabulate
 from slab.daytime import HEAT, MASS, VAPOUR, Offsets
 from slab.growth import slab_at
 from slab.night_grid import Column, Grid
@@ -60,6 +60,17 @@ def moved(air: Aloft, later: Aloft | None, at: Offsets, mass: Array) -> tuple[Ar
     return theta + at.warmed, np.maximum(humidity + at.moistened, 1e-7), u, v
 
 
+def nodes_now(air: Aloft, at: Offsets) -> Array:
+    """Mass levels where the table's own levels are now, with ground, cap and table top: the moved air is linear between."""
+    mass = np.asarray(air.mass)
+    if at.sunk == 0.0:
+        return mass
+    where = origins(air, mass, -at.sunk)
+    top = min(float(where[-1]), float(mass[-1]))
+    inside = where[where < top]
+    return distinct(np.unique(np.concatenate((inside, [0.0, top], [air.cap] if air.cap < top else []))))
+
+
 def column_after_slab(air: Aloft, later: Aloft | None, at: Offsets, y: list[float], wind: tuple[float, float],
                       softened: bool) -> tuple[Aloft, float, float]:  # fmt: skip
     """The column under and above a slab of state ``y`` as one table; also the heat and vapour the table leaves out.
@@ -67,13 +78,14 @@ def column_after_slab(air: Aloft, later: Aloft | None, at: Offsets, y: list[floa
     ``softened`` draws the jump as an entrainment zone a quarter of the depth thick (for comparing with soundings),
     else it is as sharp as the table allows (a few centimetres).
     """
-    mass = np.asarray(air.mass)
-    height = np.asarray(air.height)
+    mass, height = np.asarray(air.mass), np.asarray(air.height)
+    nodes = nodes_now(air, at)
+    node_height = np.interp(nodes, mass, height)
     top = float(np.interp(y[MASS], mass, height))
     half = 0.125 * top if softened else SHARP
-    low, high = top - half, min(top + half, float(height[-1]))
-    kept = height[(height < low - SHARP) | (height > high + SHARP)]
-    lid = [float(np.interp(air.cap, mass, height))] if air.cap < mass[-1] else []
+    low, high = top - half, min(top + half, float(node_height[-1]))
+    kept = node_height[(node_height < low - SHARP) | (node_height > high + SHARP)]
+    lid = [float(np.interp(air.cap, mass, height))] if air.cap < nodes[-1] else []
     levels = np.unique(np.concatenate((kept, [0.0, low, high], lid)))
     level_mass = np.interp(levels, height, mass)
     aloft = moved(air, later, at, level_mass)
@@ -110,11 +122,11 @@ def column_after_night(edges: Array, grid: Grid, state: Column, above: Aloft, la
     """The night's cells and the air above them, moved by ``at``, as one table; also the heat and vapour it leaves out."""
     centre = np.asarray(grid.height)
     cell_mass = np.concatenate(([0.0], np.cumsum(np.asarray(grid.mass))))
-    upper_height, upper_mass = np.asarray(above.height), np.asarray(above.mass)
-    keep = upper_height >= edges[-1] - 1e-6
-    upper = moved(above, later, at, upper_mass[keep])
-    levels = np.concatenate(([0.0], centre, upper_height[keep]))
-    mass = np.concatenate(([0.0], np.interp(centre, edges, cell_mass), upper_mass[keep]))
+    nodes = nodes_now(above, at)
+    upper_mass = np.concatenate((cell_mass[-1:], nodes[nodes > cell_mass[-1] * (1.0 + 1e-9)]))
+    upper = moved(above, later, at, upper_mass)
+    levels = np.concatenate(([0.0], centre, np.interp(upper_mass, np.asarray(above.mass), np.asarray(above.height))))
+    mass = np.concatenate(([0.0], np.interp(centre, edges, cell_mass), upper_mass))
     columns = []
     for cells, air in zip(state[:4], upper, strict=True):
         columns.append(np.concatenate(([cells[0]], np.asarray(cells), air)))

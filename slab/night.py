@@ -260,7 +260,7 @@ def outside_air(
     if divergence != 0.0:
         pairs = zip(setup.state[:4], (theta_rate, humidity_rate, u_force, v_force), strict=True)
         for values, out in pairs:
-            sinking_rates(divergence, setup.grid, values, out)
+            sinking_rates(divergence, setup.grid, values, values[-1], out)
     return Outside(theta_rate, humidity_rate, u_force, v_force, coriolis)
 
 

@@ -208,10 +208,16 @@ def heat_content(grid: Grid, state: Column) -> float:
 
 
 @kernel
-def sinking_rates(divergence: float, grid: Grid, values: Numbers, out: Numbers) -> None:
-    """Add to ``out`` the change [per s] of a quantity by air sinking at w = -D z (rising where D < 0), upwind."""
+def sinking_rates(divergence: float, grid: Grid, values: Numbers, beyond: float, out: Numbers) -> None:
+    """Add to ``out`` the change [per s] of a quantity by air sinking at w = -D z (rising where D < 0), upwind.
+
+    ``beyond`` is the quantity one cell above the top: what sinks into the column.
+    """
     last = len(values) - 1
     for i in range(last + 1):
-        j = min(i, last - 1) if divergence > 0.0 else max(i - 1, 0)
-        slope = (values[j + 1] - values[j]) * grid.inverse_spacing[j]
+        if i == last and divergence > 0.0:
+            slope = (beyond - values[last]) / grid.thickness[last]
+        else:
+            j = i if divergence > 0.0 else max(i - 1, 0)
+            slope = (values[j + 1] - values[j]) * grid.inverse_spacing[j]
         out[i] += divergence * grid.height[i] * slope

@@ -150,9 +150,9 @@ def _toward_measured(setup: Setup, measured: float) -> Array:
 
 
 def _outside(setup: Setup, place: Place, values: Array, uniform: float, heating: Numbers,
-             later_change: tuple[Array, ...], later_rate: float) -> Outside:  # fmt: skip
+             later_change: tuple[Array, ...], later_rate: float, beyond: Sequence[float]) -> Outside:  # fmt: skip
     """What acts on the cells: their own long-wave in place of the free air's ``uniform`` one, advection, sinking, a
-    later profile, the pressure gradient, a measured wind."""
+    later profile, the pressure gradient, a measured wind. ``beyond`` is the air one cell above the top."""
     state = setup.state
     n, coriolis = len(state.theta), place.coriolis
     scaling = _toward_measured(setup, float(values[WIND_10M])) if place.wind_given > 0.0 else np.zeros(n)
@@ -165,8 +165,8 @@ def _outside(setup: Setup, place: Place, values: Array, uniform: float, heating:
         rates = [rate + later_rate * change for rate, change in zip(rates, later_change, strict=True)]
     out = [numbers(rate) for rate in rates]
     if values[DIVERGENCE] != 0.0:
-        for held, rate in zip(state[:4], out, strict=True):
-            sinking_rates(float(values[DIVERGENCE]), setup.grid, held, rate)
+        for held, inflow, rate in zip(state[:4], beyond, out, strict=True):
+            sinking_rates(float(values[DIVERGENCE]), setup.grid, held, inflow, rate)
     return Outside(out[0], out[1], out[2], out[3], coriolis)
 
 
@@ -255,7 +255,9 @@ def through_night(first: int, last: int, times: Array, table: Array, start: Hand
     totals, gained = numbers([heat, vapour, 0.0, sensible, 0.0, into, 0.0, 0.0]), list(aloft)
     notes: dict[int, NightNote] = {}
     at, step, upward, k = _NOTHING, 1.0, 0, first
+    over_top = np.array([float(np.sum(grid.mass)) + 0.5 * float(grid.mass[-1])])
     while True:
+        beyond = [float(x[0]) for x in moved(start.air, later, at, over_top)]
         span = float(times[min(k + 1, last)] - times[k]) or CHUNK
         pieces = max(1, math.ceil(span / CHUNK - 1e-9))
         for piece in range(pieces):
@@ -266,12 +268,15 @@ def through_night(first: int, last: int, times: Array, table: Array, start: Hand
             if sky.given:
                 down = float(values[LONGWAVE])
             later_rate = float(table[min(k + 1, last), LATER_WEIGHT] - table[k, LATER_WEIGHT]) / span
-            outside = _outside(setup, place, values, uniform, heating, change, later_rate)
+            outside = _outside(setup, place, values, uniform, heating, change, later_rate, beyond)
             drive = _drive(setup, ground, place, values, down)
             if piece == 0:
                 link = right_side(setup.method, grid, setup.foot, setup.soil, drive, outside, state, setup.work.rates,
                                   setup.work, False)  # fmt: skip
-                if k > first or math.isnan(start.residual_top):
+                if k == first and math.isfinite(start.residual_top):
+                    for name, value in zip(("sunk", "warmed", "moistened", "later"), at[:4], strict=True):
+                        record[k][INDEX[name]] = value
+                else:
                     _write(record[k], setup, ground, drive, table[k], link, at, totals, gained, heights)
                 notes[k] = _note(setup, ground, drive, link)
                 upward = upward + 1 if record[k][INDEX["buoyancy_flux"]] > 0.0 else 0

@@ -11,7 +11,7 @@ from forcing.profile import Profile
 from slab.column import Aloft
 from slab.cycle import DAY, Part, Run
 from slab.daytime import EAST, HEAT, MASS, MEMBERS, NORTH, VAPOUR, Offsets
-from slab.handover import column_after_slab, moved
+from slab.handover import column_after_slab, moved, nodes_now
 
 
 def part_at(run: Run, knot: int) -> Part:
@@ -47,14 +47,14 @@ def profile_at(run: Run, knot: int, *, softened: bool = True) -> Profile:
         return _profile(run, knot, table)
     assert part.course is not None
     note = part.course.notes[knot]
-    height, mass = np.asarray(part.air.height), np.asarray(part.air.mass)
-    top = float(part.course.height[-1])
-    above = height > top + 1.0
-    aloft = moved(part.air, part.later, at, mass[above])
-    levels = np.concatenate(([0.0], part.course.height, height[above]))
+    nodes = nodes_now(part.air, at)
+    above = nodes[nodes > part.course.mass[-1] * 1.001]
+    aloft = moved(part.air, part.later, at, above)
+    height = np.interp(above, np.asarray(part.air.mass), np.asarray(part.air.height))
+    levels = np.concatenate(([0.0], part.course.height, height))
     cell_mass = np.concatenate(([0.0], part.course.mass))
     centre_mass = 0.5 * (cell_mass[1:] + cell_mass[:-1])
-    level_mass = np.concatenate(([0.0], centre_mass, mass[above]))
+    level_mass = np.concatenate(([0.0], centre_mass, above))
     cells = (note.theta, note.humidity, note.u, note.v)
     columns = [np.concatenate((c[:1], c, a)) for c, a in zip(cells, aloft, strict=True)]
     exner = (run.surface_pressure / 1e5) ** 0.286
