@@ -252,7 +252,7 @@ def from_profile(profile: Profile) -> Aloft:
         np.interp(levels, profile.height, x) for x in (profile.theta, profile.humidity, profile.u, profile.v)
     )
     pressure = pressure_by_theta(levels, theta, humidity, profile.surface_pressure)
-    mass = (profile.surface_pressure - pressure) / GRAVITY
+    mass = (pressure[0] - pressure) / GRAVITY
     cap = float(np.interp(SINKING_CAP_HEIGHT, levels, mass)) if top > SINKING_CAP_HEIGHT else 10.0 * float(mass[-1])
     return tabulate(mass, levels, theta, humidity, u, v, cap)
 

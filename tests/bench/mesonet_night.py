@@ -31,6 +31,7 @@ from night_scores import (
     rows,
     score_line,
 )
+from numpy.typing import NDArray
 
 from forcing.air import EPSILON, GRAVITY, KAPPA, P_REFERENCE, R_DRY, saturation_vapour_pressure
 from forcing.profile import Profile
@@ -41,6 +42,8 @@ from forcing.series import Series
 from forcing.sun import sunrise_sunset
 from forcing.weather import Weather
 from slab.cycle import run
+
+Flags = NDArray[np.bool_]
 
 SET = "mesonet_2019"
 START = datetime(2019, 3, 22, 20, tzinfo=UTC)
@@ -184,7 +187,7 @@ def end(time: Array, contrast: Array, sunrise: float) -> float:
     return _holds(time, (contrast <= 0.0) & (time >= sunrise - 3600.0))
 
 
-def _holds(time: Array, state: Array) -> float:
+def _holds(time: Array, state: Flags) -> float:
     needed = round(PERSISTS / GRID)
     for i in range(time.size - needed):
         if state[i : i + needed + 1].all():
@@ -198,7 +201,7 @@ def slots(time: Array, values: Array) -> Array:
     return np.asarray(values[: values.size // n * n].reshape(-1, n).mean(axis=1))
 
 
-def contingency(said: Array, seen: Array) -> str:
+def contingency(said: Flags, seen: Flags) -> str:
     """Counts and rates of one yes-or-no statement."""
     hits, misses = int(np.sum(said & seen)), int(np.sum(~said & seen))
     false, quiet = int(np.sum(said & ~seen)), int(np.sum(~said & ~seen))
@@ -214,7 +217,7 @@ def timing_lines(used: list[Station], computed: list[Array]) -> list[str]:
              f"{'':<9}{'':>5} | {'measured':>10}{'computed':>10}   | {'measured':>10}{'computed':>10}  | measured computed | both"]  # fmt: skip
     for one, contrast in zip(used, computed, strict=True):
         dark = (one.time > one.sunset) & (one.time < one.sunrise)
-        row = []
+        row: list[tuple[float, float, float, float]] = []
         for values in (one.contrast, contrast):
             row.append(
                 (
@@ -226,10 +229,10 @@ def timing_lines(used: list[Station], computed: list[Array]) -> list[str]:
             )
         seen.append(row[0])
         said.append(row[1])
-        a, b = row
+        first, second = row
         lines.append(
-            f"{one.name:<9}{np.mean(one.wind[dark]):>5.1f} | {a[0]:>10.0f}{b[0]:>10.0f}   | {a[1]:>10.0f}{b[1]:>10.0f}  "
-            f"| {a[2]:>8.2f}{b[2]:>9.2f} | {a[3]:.1f} {b[3]:.1f}"
+            f"{one.name:<9}{np.mean(one.wind[dark]):>5.1f} | {first[0]:>10.0f}{second[0]:>10.0f}   | {first[1]:>10.0f}{second[1]:>10.0f}  "
+            f"| {first[2]:>8.2f}{second[2]:>9.2f} | {first[3]:.1f} {second[3]:.1f}"
         )
     a_all, b_all = np.array(seen), np.array(said)
     for j, (name, baseline) in enumerate(
@@ -247,7 +250,7 @@ def timing_lines(used: list[Station], computed: list[Array]) -> list[str]:
 def contingency_lines(used: list[Station], computed: list[Array]) -> list[str]:
     """Yes or no by half hours over all stations, beside the two baselines."""
     time = slots(used[0].time, used[0].time)
-    rules: list[tuple[str, Callable[[int, float], Array]]] = [
+    rules: list[tuple[str, Callable[[int, float], Flags]]] = [
         ("computed", lambda i, k: slots(time, computed[i]) > k),
         ("sunset to sunrise", lambda i, _: (time > used[i].sunset) & (time < used[i].sunrise)),
         ("wind below 2 m/s (clear sky)", lambda i, _: slots(time, used[i].wind) < 2.0),

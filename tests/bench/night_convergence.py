@@ -51,11 +51,11 @@ class Night:
         for i in range(8):
             self.totals[i] = 0.0
         common = (setup.method, setup.grid, setup.foot, setup.soil, self.drive, self.outside, state, work)
-        rows, spent = [], 0.0
+        rows, spent, trial = [], 0.0, 1.0
         for hour in range(1, HOURS + 1):
             begun = time.process_time()
             if scheme == "rosenbrock":
-                rosenbrock_night(*common, self.totals, HOUR, step)
+                trial = rosenbrock_night(*common, self.totals, HOUR, step, trial)
             elif scheme == "frozen":
                 frozen_night(*common, HOUR, step)
             else:

@@ -15,12 +15,12 @@ from slab.night_terms import Method, Outside, Soil, Work, _air_rates, _ground_ra
 @kernel
 def rosenbrock_night(
     method: Method, grid: Grid, foot: Footing, soil: Soil, drive: Drive, outside: Outside, state: Column, work: Work,
-    totals: Numbers, duration: float, chunk: float,
-) -> None:  # fmt: skip
+    totals: Numbers, duration: float, chunk: float, step: float,
+) -> float:  # fmt: skip
     """The product's own stepping, chunk by chunk as the driver calls it."""
-    step = 1.0
     for _ in range(round(duration / chunk)):
         step = advance(method, grid, foot, soil, drive, outside, state, work, totals, chunk, step)
+    return step
 
 
 @kernel
