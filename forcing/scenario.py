@@ -37,7 +37,7 @@ from forcing.scenario_types import (
     VentilationClass,
 )
 from forcing.scenario_write import write_toml
-from forcing.section import FLAGS_SOURCE, Section, check_layout
+from forcing.section import FLAGS_SOURCE, FREE_TABLES, Section, check_layout
 from forcing.series import read_text
 
 __all__ = [
@@ -99,7 +99,7 @@ def build(settings: Settings, *, folder: Path, source: str, text: str = "", part
     title = str(settings.get("title") or "the site")
     profiles = read_profiles(sections, folder, title, parts)
     run = read_run(sections["run"])
-    cover, soil_moisture = read_cover(sections["surface"])
+    cover, soil_moisture = read_cover(sections["surface"], settings)
     fluxes = read_fluxes_of(sections["surface"], folder, parts)
     weather = read_weather_of(sections["weather"], folder, parts, wind_known=profiles.morning.wind_known)
     scenario = Scenario(
@@ -138,6 +138,7 @@ def _absolute(settings: Settings, sections: Mapping[str, Section], folder: Path)
                 values[key] = str((folder / Path(value.strip()).expanduser()).resolve())
         if values:
             out[name] = values
+    out |= {name: settings[name] for name in FREE_TABLES if settings.get(name)}
     return out
 
 

@@ -101,10 +101,14 @@ def _zone_remedy(name: str, lower: Mapping[str, str]) -> str:
     return "write an IANA name such as Etc/GMT+6 or UTC"
 
 
-def read_cover(section: Section) -> tuple[Cover, float]:
-    """Land cover with the overrides of the section, and the soil moisture (0 wilting point to 1 field capacity)."""
-    from forcing.cover import LIMITS, adapt, cover
+def read_cover(section: Section, settings: Settings) -> tuple[Cover, float]:
+    """Land cover with the overrides of the section, and the soil moisture (0 wilting point to 1 field capacity).
+
+    ``settings`` is the whole scenario, for the user's own covers in it.
+    """
+    from forcing.cover import LIMITS, adapt
     from forcing.errors import CoverError
+    from forcing.own_covers import read_own_covers, resolve
 
     wanted: str | dict[str, float]
     mixed = section.values.get("cover")
@@ -115,10 +119,7 @@ def read_cover(section: Section) -> tuple[Cover, float]:
         wanted = section.text("cover") or DEFAULT_COVER
     section.only([*SURFACE_KEYS, *LIMITS])
     changes = {key: section.number(key, *bounds) for key, bounds in LIMITS.items() if key in section.values}
-    try:
-        found = cover(wanted)
-    except CoverError as problem:
-        raise CoverError(problem.problem, place=section.place("cover"), remedy=problem.remedy) from None
+    found = resolve(wanted, read_own_covers(settings, section.file), place=section.place("cover"))
     try:
         found = adapt(found, changes) if changes else found
     except CoverError as problem:

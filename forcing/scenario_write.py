@@ -65,6 +65,11 @@ def write_toml(scenario: Scenario, *, beside: str | Path | None = None) -> str:
             lines.append(f"# {key} = {shown}  # {meaning}; {why}" if shown else f"# {key} =  # {meaning}; {why}")
         for key, value in values.items():
             lines += _line(key, _value(value), "in place of the property of the cover")
+    for name, own in _mapping(scenario.settings.get("covers")).items():
+        lines += ["", f"[covers.{_value(name)}]", *(f"{key} = {_value(value)}" for key, value in _mapping(own).items())]
+    changes = scenario.settings.get("change")
+    for change in changes if isinstance(changes, list | tuple) else ():
+        lines += ["", "[[change]]", *(f"{key} = {_value(value)}" for key, value in _mapping(change).items())]
     return "\n".join(lines) + "\n"
 
 

@@ -14,6 +14,9 @@ from forcing.series import parse_time, suggestion
 
 #: What messages call the place where values come from first-use flags instead of a file.
 FLAGS_SOURCE = "flags"
+#: Tables beside the sections: the user's own covers by name, and the changes of ground to compare with.
+FREE_TABLES = ("covers", "change")
+CHANGE_KEYS = ("name", "make")
 
 
 @dataclass(frozen=True, slots=True)
@@ -139,9 +142,11 @@ def check_layout(settings: Mapping[str, object], file: str) -> dict[str, Section
                 raise ScenarioError(
                     f"{_shown(value)} is not text", place=f"{file}: title", remedy='write title = "..."'
                 )
+        elif name in FREE_TABLES:
+            _check_free(name, value, file)
         elif name not in KEYS:
             owner = next((section for section, keys in KEYS.items() if name in keys), None)
-            remedy = suggestion(name, ["title", *KEYS])
+            remedy = suggestion(name, ["title", *KEYS, *FREE_TABLES])
             if not isinstance(value, Mapping) and owner is not None:
                 remedy = f"put it under [{owner}]"
             raise ScenarioError(f"unknown section or key '{name}'", place=file, remedy=remedy)
@@ -154,3 +159,17 @@ def check_layout(settings: Mapping[str, object], file: str) -> dict[str, Section
         if name != "surface":
             sections[name].only(keys)
     return sections
+
+
+def _check_free(name: str, value: object, file: str) -> None:
+    """Raise where ``[covers.<name>]`` or ``[[change]]`` is not a table of its own, or a change lacks its words."""
+    rows = value if name == "change" else list(value.values()) if isinstance(value, Mapping) else None
+    if not isinstance(rows, list | tuple) or not all(isinstance(row, Mapping) for row in rows):
+        shape = "[[change]]" if name == "change" else '[covers."my meadow"]'
+        raise ScenarioError(f"{_shown(value)} is not a table", place=f"{file}: {name}", remedy=f"write {shape}")
+    if name == "change":
+        for number, row in enumerate(rows, start=1):
+            part = Section(file, f"change {number}", row)
+            part.only(CHANGE_KEYS)
+            part.text("make", needed=True, example="albedo +0.10")
+            part.text("name")
