@@ -202,8 +202,8 @@ def test_convergence_on_the_shared_nights() -> None:
     for case in plains_nights()[::2]:  # all ten: tests/bench/night_convergence.py
         error = errors_after_hour_three(night(case, output=HOUR), night(case, output=HOUR, tolerance=0.02))
         worst.append(float(error.max()))
-    assert np.median(worst) < 0.1
-    assert max(worst) < 0.2
+    assert np.median(worst) < 0.03
+    assert max(worst) < 0.1
 
 
 @pytest.mark.observed
