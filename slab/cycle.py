@@ -15,8 +15,18 @@ from forcing.errors import ModelError, ScenarioError
 from forcing.longwave_column import Anchor
 from forcing.scenario_types import Scenario
 from forcing.surface import Ground, soil_layers
-from forcing.table import DIVERGENCE, LATENT, LATER_WEIGHT, NET_RADIATION, SENSIBLE, SHORTWAVE, Knots, knot_times, tabulate
-from slab.column import Aloft, as_numbers, from_profile, on_same_levels
+from forcing.table import (
+    DIVERGENCE,
+    LATENT,
+    LATER_WEIGHT,
+    NET_RADIATION,
+    SENSIBLE,
+    SHORTWAVE,
+    Knots,
+    knot_times,
+    tabulate,
+)
+from slab.column import Aloft, as_numbers, from_profile, on_same_levels, origins
 from slab.daytime import EAST, HEAT, MASS, MEMBERS, NORTH, SOIL, SOIL_LAYERS, SURFACE_HEAT, VAPOUR, Offsets, Place
 from slab.growth import CLOSURES, Closure
 from slab.handover import Handover, column_after_slab
@@ -268,22 +278,43 @@ def run(scenario: Scenario, *, control: Control = STANDARD, heights: tuple[float
 def _collect(stage: _Stage, parts: tuple[Part, ...], stopped: str, soil: GroundStart | None) -> Run:
     table = np.array([list(row) for row in stage.record])
     day = np.zeros(len(table), dtype=bool)
-    residual = np.full(len(table), math.nan)
     for part in parts:
         day[part.first : part.last + 1] = part.kind == DAY
-        if part.course is not None:
-            start = table[part.first, INDEX["sunk"]]
-            top = _residual_before(parts, part, table)
-            residual[part.first : part.last + 1] = top * np.exp(start - table[part.first : part.last + 1, INDEX["sunk"]])
     return Run(
         scenario=stage.scenario, time=stage.knots.time, fields={n: table[:, INDEX[n]] for n in NAMES},
-        heights=stage.heights, temperatures=table[:, FIELDS:], day=day, residual_top=residual, parts=parts,
-        stopped=stopped, ground=stage.ground, soil_start=soil, anchor=stage.anchor,
+        heights=stage.heights, temperatures=table[:, FIELDS:], day=day, residual_top=_residual_tops(parts, table),
+        parts=parts, stopped=stopped, ground=stage.ground, soil_start=soil, anchor=stage.anchor,
         radiative_heating=stage.heating, surface_pressure=stage.place.pressure,
     )  # fmt: skip
 
 
-def _residual_before(parts: tuple[Part, ...], night: Part, table: Array) -> float:
-    """Depth [m] of the mixed layer that the night inherited, NaN where the run starts with it."""
-    before = [part for part in parts if part.kind == DAY and part.last == night.first]
-    return float(table[max(before[-1].last - 1, 0), INDEX["depth"]]) if before else math.nan
+def _residual_tops(parts: tuple[Part, ...], table: Array) -> Array:
+    """Top [m] of the layer that the last day left behind, sinking with the air, until the next day's slab reaches it."""
+    tops = np.full(len(table), math.nan)
+    top = math.nan
+    for part in parts:
+        if part.kind == NIGHT and part.first > 0:
+            top = float(table[part.first - 1, INDEX["depth"]])
+        if math.isnan(top):
+            continue
+        inside = slice(part.first, part.last + 1)
+        sunk = table[inside, INDEX["sunk"]].copy()
+        if part.course is not None:
+            sunk[-1] = part.course.offsets.sunk  # the record at a shared knot is that of the day that begins there
+        tops[inside] = [_moved_top(part.air, top, float(s)) for s in sunk]
+        top = float(tops[part.last])
+        if part.kind == DAY:
+            reached = np.flatnonzero(table[inside, INDEX["depth"]] >= tops[inside])
+            if reached.size:
+                tops[part.first + reached[0] : part.last + 1] = math.nan
+                top = math.nan
+    return tops
+
+
+def _moved_top(air: Aloft, top: float, sunk: float) -> float:
+    """Height [m] now of the air that was at ``top`` [m] before it sank by ``sunk`` [1]."""
+    if not math.isfinite(sunk):
+        return math.nan
+    height, mass = np.asarray(air.height), np.asarray(air.mass)
+    now = origins(air, np.array([np.interp(top, height, mass)]), -sunk)
+    return float(np.interp(now[0], mass, height))

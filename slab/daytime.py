@@ -56,6 +56,7 @@ MEMBERS = SURFACE_HEAT + 6
 
 LEAST_STEP = 1e-7  # [s] a start without a jump grows without bound for an instant
 SURFACE_LAYER = 0.1  # share of the mixed layer that is surface layer (AMS Glossary)
+STABLE_REFERENCE = 10.0  # [m] that top where the surface takes heat from a slab that has just stopped being fed (our choice)
 LEAST_REFERENCE = 2.0  # [m] lowest height at which slab values stand for the surface layer's top
 THETA_TOLERANCE = 0.005  # [K] local error of slab temperature
 
@@ -152,15 +153,15 @@ def air_at(air: Aloft, later: Aloft, place: Place, level: float, at: Offsets) ->
 @kernel
 def surface_exchange(y: Numbers, place: Place, ground: Ground, thickness: Numbers, values: Numbers, depth: float,
                      theta: float, humidity: float, shade: float, memory: list[float]) -> tuple[Exchange, float, float]:  # fmt: skip
-    """Fluxes between ground and slab: from the energy balance, or as given. ``values`` is the forcing now."""
-    exner = (place.pressure / P_REFERENCE) ** KAPPA
-    reference = max(SURFACE_LAYER * depth, LEAST_REFERENCE, 10.0 * ground.roughness_momentum)
+    """Fluxes between ground and slab: from the energy balance, or as given. ``values`` is the forcing now.
+
+    Also the wind [m s-1] and the height [m] that stand for the top of the surface layer. In an evening's first stable
+    minutes that top is `STABLE_REFERENCE`, with the slab's wind brought down by the neutral logarithmic law: stable
+    similarity over a tenth of a deep slab would cool the skin by ten kelvins. At neutral both heights agree.
+    """
+    least = max(LEAST_REFERENCE, 10.0 * ground.roughness_momentum)
+    reference = max(SURFACE_LAYER * depth, least)
     wind = math.sqrt(y[EAST] * y[EAST] + y[NORTH] * y[NORTH])
-    wind_height = reference
-    if place.wind_given > 0.0:
-        wind = values[WIND_10M]
-        wind_height = 10.0
-    warm = theta * exner
     if place.kinematic > 0.0:
         unknown = math.nan
         exchange = Exchange(
@@ -168,29 +169,48 @@ def surface_exchange(y: Numbers, place: Place, ground: Ground, thickness: Number
             unknown, unknown,
         )  # fmt: skip
         return exchange, wind, reference
-    if place.fluxes_given > 0.0:
-        friction = values[FRICTION] if place.friction_given > 0.0 else math.nan
-        exchange = imposed_fluxes(
-            ground, values[SENSIBLE], values[LATENT], warm, humidity, reference, wind, wind_height, depth,
-            place.pressure, friction, memory[1],
-        )  # fmt: skip
-        memory[1] = exchange.inverse_obukhov
-        return exchange, wind, reference
-    half = 2.0 * ground.soil_conductivity / thickness[0]
-    shortwave = values[SHORTWAVE] * shade
-    if place.net_radiation_given > 0.0:
-        exchange = energy_balance_net(
-            ground, shortwave, values[NET_RADIATION], warm, humidity, reference, wind, wind_height, depth,
-            place.pressure, y[SOIL], half, values[ANTHROPOGENIC], memory[0], memory[1],
-        )  # fmt: skip
-    else:
-        exchange = energy_balance(
-            ground, shortwave, values[LONGWAVE], warm, humidity, reference, wind, wind_height, depth,
-            place.pressure, y[SOIL], half, values[ANTHROPOGENIC], memory[0], memory[1],
-        )  # fmt: skip
+    slab_wind_speed = wind
+    if place.wind_given > 0.0:
+        wind = values[WIND_10M]
+    exchange = _exchange_below(y, place, ground, thickness, values, depth, theta, humidity, shade, memory, wind, reference)
+    low = max(STABLE_REFERENCE, least)
+    if exchange.inverse_obukhov > 0.0 and reference > low:
+        if place.wind_given == 0.0:
+            rough = ground.roughness_momentum
+            wind = slab_wind_speed * math.log((low + rough) / rough) / math.log((reference + rough) / rough)
+        reference = low
+        exchange = _exchange_below(
+            y, place, ground, thickness, values, depth, theta, humidity, shade, memory, wind, reference
+        )
     memory[0] = exchange.skin_temperature
     memory[1] = exchange.inverse_obukhov
     return exchange, wind, reference
+
+
+@kernel
+def _exchange_below(y: Numbers, place: Place, ground: Ground, thickness: Numbers, values: Numbers, depth: float,
+                    theta: float, humidity: float, shade: float, memory: list[float], wind: float,
+                    reference: float) -> Exchange:  # fmt: skip
+    """Fluxes through a surface layer whose top, at ``reference`` [m], has the slab's temperature and humidity."""
+    wind_height = 10.0 if place.wind_given > 0.0 else reference
+    warm = theta * (place.pressure / P_REFERENCE) ** KAPPA
+    if place.fluxes_given > 0.0:
+        friction = values[FRICTION] if place.friction_given > 0.0 else math.nan
+        return imposed_fluxes(
+            ground, values[SENSIBLE], values[LATENT], warm, humidity, reference, wind, wind_height, depth,
+            place.pressure, friction, memory[1],
+        )  # fmt: skip
+    half = 2.0 * ground.soil_conductivity / thickness[0]
+    shortwave = values[SHORTWAVE] * shade
+    if place.net_radiation_given > 0.0:
+        return energy_balance_net(
+            ground, shortwave, values[NET_RADIATION], warm, humidity, reference, wind, wind_height, depth,
+            place.pressure, y[SOIL], half, values[ANTHROPOGENIC], memory[0], memory[1],
+        )  # fmt: skip
+    return energy_balance(
+        ground, shortwave, values[LONGWAVE], warm, humidity, reference, wind, wind_height, depth,
+        place.pressure, y[SOIL], half, values[ANTHROPOGENIC], memory[0], memory[1],
+    )  # fmt: skip
 
 
 @kernel
