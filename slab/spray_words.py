@@ -1,0 +1,216 @@
+"""What a spray calendar says in sentences, for text and picture alike."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from datetime import datetime
+from typing import Any
+
+from forcing.units import MILE_PER_HOUR_M_S
+from slab.wording import Clock, Units, number
+
+__all__ = [
+    "LIMIT_NAMES",
+    "limit_sentences",
+    "lines_of_inversion",
+    "plan_words",
+    "profile_age",
+    "span",
+    "spray_wind",
+    "statement",
+]
+
+Document = Mapping[str, Any]
+
+LIMIT_NAMES = {
+    "inversion": "inversion",
+    "possible inversion": "possible inversion",
+    "wind": "wind",
+    "hours": "hours from sunrise or to sunset",
+    "delta-t": "Delta-T",
+    "temperature": "temperature",
+    "humidity": "humidity",
+    "rain": "rain",
+}
+PLAN = "plan only"
+PAST = "past"
+
+
+def plan_words(plan_only: bool) -> str:
+    """The mark of an hour: a plan where it is still to come."""
+    return PLAN if plan_only else PAST
+
+
+def span(clock: Clock, ends: Sequence[str] | None, *, joined: str = "to") -> str:
+    """A range of hours in local time; a date that both ends share is said once."""
+    if not ends:
+        return "not known"
+    early, late = (clock.say(one, utc=False, zone=False) for one in ends)
+    first, _, date = early.partition(" on ")
+    if date and late.endswith(f" on {date}"):
+        early = first
+    return f"{early} {joined} {late}"
+
+
+def spray_wind(units: Units, value: float | None) -> str:
+    """Wind near the ground: m/s, or mph in us units."""
+    if value is None:
+        return "not known"
+    return f"{number(value, 0.1)} m/s" if units.name == "metric" else f"{number(value / MILE_PER_HOUR_M_S, 1.0)} mph"
+
+
+def profile_age(document: Document) -> str:
+    """Age of the profile at the moment the calendar is made, and its distance."""
+    profile = document["profile"]
+    far, hours = profile.get("distance_km"), profile["age_hours"]
+    away = "at an unknown distance" if far is None else f"{far:.0f} km away"
+    moment = f"{document['now'][:16].replace('T', ' ')} UTC"
+    age = f"{_long(hours)} old at {moment}" if hours >= 0.0 else f"released {_long(-hours)} after {moment}"
+    return f"{age}, {away}"
+
+
+def _long(hours: float) -> str:
+    return f"{hours:.1f} h" if hours < 72.0 else f"{hours / 24.0:.0f} days"
+
+
+def _hours_from(window: Mapping[str, Any], event: str | None, name: str) -> str:
+    """A window said from sunset or sunrise, such as "0.5 to 2.0 h before sunset"."""
+    if event is None:
+        return ""
+    sun = datetime.fromisoformat(event)
+    first, last = ((datetime.fromisoformat(window[key]) - sun).total_seconds() / 3600.0 for key in ("early", "late"))
+    if last <= 0.0:
+        return f", {-last:.1f} to {-first:.1f} h before {name}"
+    if first >= 0.0:
+        return f", {first:.1f} to {last:.1f} h after {name}"
+    return f", {-first:.1f} h before to {last:.1f} h after {name}"
+
+
+def lines_of_inversion(document: Document, units: Units) -> list[str]:
+    """One or two sentences for every night that the run touches."""
+    clock, out = Clock.of(document), []
+    low, high = document["between_m"]
+    for night in document["nights"]:
+        local = clock.local(datetime.fromisoformat(night["from"]))
+        name = f"night from {local:%a} {local.day} {local:%b}"
+        onset, end, parts = night["onset"], night["end"], []
+        if onset:
+            ends = (onset["early"], onset["late"])
+            some = _members(onset["members"], night["of_members"])
+            parts.append(
+                f"begins between {span(clock, ends, joined='and')}{_hours_from(onset, night['sunset'], 'sunset')}{some}"
+            )
+        elif night["there_before"]:
+            parts.append("is there from before")
+        if end:
+            ends = (end["early"], end["late"])
+            some = _members(end["members"], night["of_members"])
+            parts.append(
+                f"ends between {span(clock, ends, joined='and')}{_hours_from(end, night['sunrise'], 'sunrise')}{some}"
+            )
+        elif night["goes_on"]:
+            parts.append("does not end within this night of the run")
+        strong = night["strongest_difference_K"]
+        if not parts:
+            out.append(f"{name}: no inversion between {low:g} and {high:g} m in the hours that the run covers.")
+            continue
+        if strong is not None and strong > 0.0:
+            parts.append(f"at most {units.difference(strong)} between {low:g} and {high:g} m")
+        out.append(f"{name}: an inversion {', '.join(parts)}.")
+    return out
+
+
+def _members(have: int, of: int) -> str:
+    return "" if have == of else f" (in {have} of {of} members)"
+
+
+def limit_sentences(document: Document) -> list[str]:
+    """Whose limits these are, and in which order they are named."""
+    limits = document["limits"]
+    height = f"wind is read at {limits['wind_height_m']:g} m ({limits['wind_height_source']})"
+    if not limits["given"]:
+        return [
+            (
+                f"No limits were given, so that no hour is called inside or outside: this shows conditions only; {height}. Put "
+                "your own limits into the [limits] section of the scenario, with the authority and the date."
+            )
+        ]
+    order = ", ".join(LIMIT_NAMES[one["code"]] for one in limits["order"])
+    return [
+        f"Your limits: {limits['authority']}, dated {limits['dated'] or 'not given'}; {height}: {_ranges(limits)}.",
+        f"An hour is outside for its most limiting reason, in the order: {order}; what is not known never counts as inside.",
+    ]
+
+
+def _ranges(limits: Mapping[str, Any]) -> str:
+    said = []
+    for name, low, high, unit in (
+        ("wind", "wind_min_m_s", "wind_max_m_s", " m/s"), ("Delta-T", "delta_t_min_K", "delta_t_max_K", " K"),
+    ):  # fmt: skip
+        ends = (limits[low], limits[high])
+        if ends != (None, None):
+            words = [f"{word} {value:g}" for word, value in zip(("from", "to"), ends, strict=True) if value is not None]
+            said.append(f"{name} {' '.join(words)}{unit}")
+    for key, form in (
+        ("hours_after_sunrise", "from {:g} h after sunrise"), ("hours_before_sunset", "to {:g} h before sunset"),
+        ("temperature_max_C", "at most {:g} °C"), ("humidity_min_pct", "humidity from {:g} %"),
+        ("rain_free_hours", "no rain for {:g} h"),
+    ):  # fmt: skip
+        if limits[key] is not None:
+            said.append(form.format(limits[key]))
+    return ", ".join(said)
+
+
+def statement(document: Document, units: Units) -> list[str]:
+    """The answer in sentences: inside or not, the inversion by night, low ground, the tower."""
+    clock, limits = Clock.of(document), document["limits"]
+    out = []
+    if limits["given"]:
+        inside = [one for one in document["stretches"] if one["status"] == "inside"]
+        if inside:
+            said = "; ".join(_stretch(clock, one) for one in inside)
+            out.append(f"Inside your own limits, with no inversion in any member: {said}. Plan only.")
+        else:
+            out.append(
+                "No hour of the run is inside your own limits without a possible inversion or an input that is not known."
+            )
+    if not document["summary"]["wind_known"]:
+        out.append("The wind is not known: no hour can be inside.")
+    out += lines_of_inversion(document, units)
+    for field in document["low_ground"]["fields"]:
+        said_ends = [span(clock, ends, joined="and") for ends in field["ends"] if ends]
+        later = " to ".join(f"{x:.1f}" for x in field["later_h"])
+        if said_ends:
+            out.append(
+                f"Field {units.height_value(field['below_m']):.0f} {units.height_unit} below the site: its inversion ends {later} h "
+                f"later or later still, between {'; '.join(said_ends)}; begins earlier by an unknown time (few observations)."
+            )
+    seen = document["observed"]
+    if seen:
+        out.append(_tower(seen, clock, units))
+    return out
+
+
+def _stretch(clock: Clock, one: Mapping[str, Any]) -> str:
+    text = span(clock, (one["start"], one["end"]))
+    spreads = [
+        f"{word} may move within {span(clock, one[key])}"
+        for word, key in (("start", "start_spread"), ("end", "end_spread"))
+        if one[key]
+    ]
+    return text + (f" ({', '.join(spreads)})" if spreads else "")
+
+
+def _tower(seen: Mapping[str, Any], clock: Clock, units: Units) -> str:
+    low, high = seen["heights_m"]
+    text = (
+        f"Tower to {clock.say(seen['last'], utc=False)}: {low:g} to {high:g} m {_signed(units, seen['observed_difference_K'])} "
+        f"read, {_signed(units, seen['modelled_difference_K'])} modelled"
+    )
+    if seen["observed_wind_m_s"] is not None:
+        text += f"; wind {spray_wind(units, seen['observed_wind_m_s'])} read, {spray_wind(units, seen['modelled_wind_m_s'])} modelled"
+    return text + ". The windows above are recomputed from it."
+
+
+def _signed(units: Units, kelvin: float) -> str:
+    return units.difference(kelvin, signed=True)
