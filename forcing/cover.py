@@ -12,7 +12,7 @@ from collections.abc import Mapping
 from dataclasses import dataclass, field, replace
 from difflib import get_close_matches
 from functools import cache
-from importlib.resources import files
+from pathlib import Path
 
 from forcing.errors import CoverError
 from forcing.exchange import NO_EVAPORATION, Ground
@@ -96,7 +96,7 @@ LIMITS: Mapping[str, tuple[float, float]] = {
 def table() -> Mapping[str, Mapping[str, Property]]:
     """Cover name -> property name -> number with range, unit and source, as shipped."""
     found: dict[str, dict[str, Property]] = {}
-    text = files("forcing").joinpath("covers.csv").read_text(encoding="utf-8")
+    text = Path(__file__).with_name("covers.csv").read_text(encoding="utf-8")
     for row in csv.DictReader(text.splitlines()):
         one = Property(float(row["value"]), float(row["low"]), float(row["high"]), row["unit"], row["source"])
         found.setdefault(row["cover"], {})[row["property"]] = one

@@ -17,7 +17,7 @@ from forcing.air import (
     vapour_pressure,
     virtual,
 )
-from forcing.levels import Levels, repair
+from forcing.levels import Levels, median, repair
 from forcing.sounding import Array, Flag, Repair
 from forcing.units import FOOT_M
 
@@ -85,7 +85,7 @@ def _unit(given: Array, above: Array) -> tuple[Array, tuple[Repair, ...]]:
     known = np.flatnonzero(np.isfinite(given))
     if known.size < 3:
         return given, ()
-    ratio = float(np.median(np.diff(given[known]) / np.diff(above[known])))
+    ratio = median(np.diff(given[known]) / np.diff(above[known]))
     if 3.0 < ratio < 3.6:
         return given * FOOT_M, repair("height unit", int(known.size), "heights named m were feet: read as feet")
     if 0.0008 < ratio < 0.0012:
@@ -100,7 +100,7 @@ def _agreeing(given: Array, above: Array, pressure: Array) -> list[int]:
         return []
     shift = given[known] - above[known]
     low = above[known] - above[known[0]] <= NEAR_GROUND
-    middle = float(np.median(shift[low]))
+    middle = median(shift[low])
     near = known[np.abs(shift - middle) <= 60.0 + 0.01 * above[known]]
     if not near.size:
         return []

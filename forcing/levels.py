@@ -62,9 +62,16 @@ def repair(name: str, count: int, detail: str) -> tuple[Repair, ...]:
     return (Repair(name, count, detail),) if count else ()
 
 
+def median(values: Array) -> float:
+    """Median of values without gaps, NaN of none; numpy's own loads masked arrays, which costs a third of a start."""
+    if not values.size:
+        return float("nan")
+    ordered = np.sort(values)
+    return 0.5 * float(ordered[(values.size - 1) // 2] + ordered[values.size // 2])
+
+
 def _middle(values: Array) -> float:
-    known = values[np.isfinite(values)]
-    return float(np.median(known)) if known.size else float("nan")
+    return median(values[np.isfinite(values)])
 
 
 def _top(values: Array) -> float:
