@@ -76,8 +76,9 @@ def constants() -> dict[str, dict[str, object]]:
 
 def _profile(folder: Path, about: dict[str, str]) -> Profile:
     sounding = read_sounding(folder / about["file"], valid=instant(about["utc_time"]))
-    place = {"latitude": float(about["lat"]), "longitude": float(about["lon"]), "elevation": float(about["elev_m"])}
-    return prepare(sounding, **place)
+    return prepare(
+        sounding, latitude=float(about["lat"]), longitude=float(about["lon"]), elevation=float(about["elev_m"])
+    )
 
 
 def nights(folder: Path) -> list[Night]:
@@ -156,10 +157,11 @@ def read_run(done: Run, night: Night) -> Reading:
 def table(all_nights: list[Night], measured: list[Reading], computed: list[Reading], clouds: list[float]) -> list[str]:
     """The nights one by one; measured first."""
     lines = [
-        "measured / computed; top and strength by the rule `rising`, (tables' own rule); range: where temperature has "
-        f"{BROAD:.0%} of the strength",
-        f"{'night':<14}{'cloud':>6} | {'dawn T (C)':>14} | {'strength (K)':>13} | {'T100-T2 (K)':>13} | {'top (m)':>11}"
-        f" {'(tables)':>12} | {'range computed':>14}",
+        f"measured / computed; tops by the rule `rising` (tables' rule); range: where it has {BROAD:.0%} of the strength",
+        (
+            f"{'night':<14}{'cloud':>6} | {'dawn T (C)':>14} | {'strength (K)':>13} | {'T100-T2 (K)':>13} | {'top (m)':>11}"
+            f" {'(tables)':>12} | {'range computed':>14}"
+        ),
     ]
     for night, a, b, cloud in zip(all_nights, measured, computed, clouds, strict=True):
         lines.append(
