@@ -275,7 +275,7 @@ def through_night(first: int, last: int, times: Array, table: Array, start: Hand
             drive = _drive(setup, ground, place, values, down)
             if piece == 0:
                 link = right_side(setup.method, grid, setup.foot, setup.soil, drive, outside, state, setup.work.rates,
-                                  setup.work, False)  # fmt: skip
+                                  setup.work, True)  # fmt: skip
                 if k == first and math.isfinite(start.residual_top):
                     for name, value in zip(("sunk", "warmed", "moistened", "later"), at[:4], strict=True):
                         record[k][INDEX[name]] = value
