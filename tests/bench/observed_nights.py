@@ -2,10 +2,12 @@
 
 Nothing but the afternoon sounding and ``observed_nights.toml`` beside this file is given. The computed column is read at the
 release hour on the release's levels by the same two rules as the measured one. It is one date: ten stations under one weather.
+``--set vienna_2015`` takes the other set through the same constants, midday to midnight over five months, without the table.
 """
 
 from __future__ import annotations
 
+import argparse
 import math
 import sys
 import tomllib
@@ -122,7 +124,7 @@ def scenario_of(night: Night, given: dict[str, dict[str, object]]) -> Scenario:
         "title": night.name,
         "site": {
             "name": night.name, "latitude": start.latitude, "longitude": start.longitude, "elevation": start.elevation,
-            "time_zone": "Etc/GMT+6",
+            "time_zone": "UTC",
         },
         "profile": {"file": str(night.path), "valid": start.valid.isoformat()},
         "surface": given["surface"],
@@ -201,7 +203,10 @@ def scores(all_nights: list[Night], measured: list[Reading], computed: list[Read
 
 def main() -> int:
     """Print the tables."""
-    folder = observed_folder() / SET
+    parser = argparse.ArgumentParser(description=__doc__)
+    parser.add_argument("--set", default=SET, choices=(SET, "vienna_2015"), help="folder of observed nights")
+    name = parser.parse_args().set
+    folder = observed_folder() / name
     if not folder.is_dir():
         print(f"observed nights are not at {folder}; set DAYLAYER_OBSERVED", file=sys.stderr)
         return 1
@@ -211,14 +216,17 @@ def main() -> int:
     measured = [read(night.dawn.height, night.dawn.temperature, night.surface) for night in all_nights]
     clouds = [float(case.weather.constants["cloud_fraction"]) for case in cases]
     gaps = [
-        (a.tables.top - n.told_top, a.tables.strength - n.told_strength)
-        for a, n in zip(measured, all_nights, strict=True)
+        (a.tables.top - night.told_top, a.tables.strength - night.told_strength)
+        for a, night in zip(measured, all_nights, strict=True)
     ]
-    print(f"one date, 21-22 May 2023, {len(all_nights)} stations under one weather: not a climate of nights")
+    about = "one date, 21-22 May 2023, stations under one weather: not a climate of nights" if name == SET else name
+    print(f"{len(all_nights)} nights ({about})")
     print(f"given: afternoon sounding; {given['surface']}; cloud by rule {given['cloud']}; everything else by default")
     print(f"night_pairs.csv from the measured dawns by the tables' rule: largest difference of top "
           f"{max(abs(x) for x, _ in gaps):.0f} m, of strength {max(abs(x) for _, x in gaps):.2f} K")  # fmt: skip
-    print("\n".join([*table(all_nights, measured, computed, clouds), *scores(all_nights, measured, computed)]))
+    if name == SET:
+        print("\n".join(table(all_nights, measured, computed, clouds)))
+    print("\n".join(scores(all_nights, measured, computed)))
     return 0
 
 
