@@ -74,13 +74,13 @@ def digest(path: str) -> str:
 
 
 def _inputs(scenario: Scenario, observed: str) -> list[tuple[str, str]]:
-    """Files that went in, with their hashes; a scenario made of flags has no file of its own."""
-    named = [("scenario", scenario.source if scenario.text else ""), ("profile", scenario.original.file)]
-    if scenario.later_original is not None:
-        named.append(("later profile", scenario.later_original.file))
-    named.append(("weather", scenario.weather.file))
-    if scenario.fluxes is not None:
-        named.append(("fluxes", scenario.fluxes.file))
+    """Files that went in, to be hashed; a scenario made of flags has no file of its own."""
+    named = [("scenario", scenario.source if scenario.text else "")]
+    keys = (("profile", "profile", "file"), ("later profile", "profile", "later"), ("weather", "weather", "file"),
+            ("fluxes", "surface", "fluxes"))  # fmt: skip
+    for name, section, key in keys:
+        values = scenario.settings.get(section)
+        named.append((name, str(values.get(key) or "") if isinstance(values, Mapping) else ""))
     named.append(("observed", observed))
     return [(name, path) for name, path in named if path]
 
