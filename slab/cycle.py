@@ -29,7 +29,7 @@ from forcing.table import (
 from slab.column import Aloft, as_numbers, from_profile, on_same_levels, origins
 from slab.daytime import EAST, HEAT, MASS, MEMBERS, NORTH, SOIL, SOIL_LAYERS, SURFACE_HEAT, VAPOUR, Offsets, Place
 from slab.growth import CLOSURES, Closure
-from slab.handover import Handover, column_after_slab
+from slab.handover import RESIDUAL, Handover, column_after_slab
 from slab.march import EVENING, FAILED, RAN_TO_END, REACHED_TOP, STANDARD, Control, march, scratch
 from slab.nightfall import MORNING, NightCourse, through_night
 from slab.radiation import NightSky, anchored, free_air_heating, sky_column
@@ -202,7 +202,7 @@ def _by_day(stage: _Stage, first: int, start: Handover) -> tuple[Part, int, Hand
     if reason == FAILED:
         raise ModelError(f"the mixed layer could not be stepped at knot {reached}", remedy="check wind and temperature input")
     wind = (state[EAST], state[NORTH])
-    column, heat, vapour = column_after_slab(air, later, at, state, wind, softened=False)
+    column, heat, vapour = column_after_slab(air, later, at, state, wind, RESIDUAL)
     depth = float(np.interp(state[MASS], np.asarray(air.mass), np.asarray(air.height)))
     handover = Handover(
         column, heat, vapour, tuple(float(t) for t in state[SOIL : SOIL + SOIL_LAYERS]), float(work.memory[0]), depth,

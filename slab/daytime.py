@@ -54,7 +54,6 @@ SENSIBLE_ENERGY = SURFACE_HEAT + 4
 GROUND_ENERGY = SURFACE_HEAT + 5
 MEMBERS = SURFACE_HEAT + 6
 
-LEAST_STEP = 1e-7  # [s] a start without a jump grows without bound for an instant
 SURFACE_LAYER = 0.1  # share of the mixed layer that is surface layer (AMS Glossary)
 STABLE_REFERENCE = 10.0  # [m] that top where the surface takes heat from a slab that has just stopped being fed (our choice)
 LEAST_REFERENCE = 2.0  # [m] lowest height at which slab values stand for the surface layer's top
@@ -252,7 +251,7 @@ def tendencies(y: Numbers, dy: list[float], tau: float, span: float, row: Number
     if place.cumulus > 0.0 and convective > 0.0:
         pressure = place.pressure - GRAVITY * mass
         warm = theta * (pressure / P_REFERENCE) ** KAPPA
-        cloud = cumulus_fraction(humidity, warm, pressure, slab.jump_humidity, speed, convective)
+        cloud = cumulus_fraction(humidity, warm, pressure, depth, slab.jump_humidity, speed, convective)
         vented = density * cloud * convective
     slab_budgets(y, dy, mass, density * speed, vented, heat_flux, vapour_flux, slab, at, air, later, place, exchange)
     if place.fluxes_given > 0.0 or place.kinematic > 0.0:

@@ -11,12 +11,12 @@ from __future__ import annotations
 import math
 from typing import NamedTuple
 
-from forcing.air import GRAVITY, VIRTUAL, saturation_humidity
-
+from forcing.air import CP_DRY, GRAVITY, KAPPA, VIRTUAL, saturation_humidity
 from forcing.speed import kernel
 from slab.column import Aloft, Sample, locate, sample
 
 SMALLEST_JUMP = 1e-6  # [K] keeps the growth rate finite where the air aloft is neutral; the growth cap then decides
+ENTRAINMENT_ZONE = 0.25  # thickness over depth of the layer, centred on its top (common practice)
 SHEAR_IN_CAP = 5.0  # share of friction velocity cubed in the mixed-layer velocity scale (Troen and Mahrt 1986, recalled 0.6 x 8)
 
 
@@ -93,45 +93,69 @@ def slab_at(mass: float, heat: float, vapour: float, air: Sample) -> Slab:
 def encroached_mass(air: Aloft, heat: float, vapour: float, sunk: float, least: float) -> float:
     """Mass [kg m-2] at which the slab's virtual temperature first meets the profile's, from ``least`` upward.
 
-    Walks the table's levels, then bisects inside the one where the jump changes sign; the mass of the table's top
-    where it never does.
+    Walks the table's levels, then narrows the one where the jump changes sign by false position with halved weights (the
+    Illinois rule); the mass of the table's top where it never does.
     """
     mass = air.mass
     top = mass[len(mass) - 1]
     low = least
-    if slab_at(low, heat, vapour, sample(air, low, sunk)).jump_virtual >= 0.0:
+    below = slab_at(low, heat, vapour, sample(air, low, sunk)).jump_virtual
+    if below >= 0.0:
         return low
     i = locate(mass, least) + 1
     high = top
+    above = -1.0
     while i < len(mass):
-        if slab_at(mass[i], heat, vapour, sample(air, mass[i], sunk)).jump_virtual >= 0.0:
+        above = slab_at(mass[i], heat, vapour, sample(air, mass[i], sunk)).jump_virtual
+        if above >= 0.0:
             high = mass[i]
             break
         low = mass[i]
+        below = above
         i += 1
     if i >= len(mass):
         return top
-    for _ in range(45):
-        middle = 0.5 * (low + high)
-        if slab_at(middle, heat, vapour, sample(air, middle, sunk)).jump_virtual >= 0.0:
+    kept = 0
+    for _ in range(60):
+        if high - low <= 1e-12 * high or above <= 1e-12:
+            break
+        middle = high - above * (high - low) / (above - below)
+        here = slab_at(middle, heat, vapour, sample(air, middle, sunk)).jump_virtual
+        if here >= 0.0:
             high = middle
+            above = here
+            below *= 0.5 if kept == 1 else 1.0
+            kept = 1
         else:
             low = middle
+            below = here
+            above *= 0.5 if kept == -1 else 1.0
+            kept = -1
     return high
 
 
 @kernel
-def cumulus_fraction(humidity: float, top_temperature: float, top_pressure: float, jump_humidity: float,
+def cumulus_fraction(humidity: float, top_temperature: float, top_pressure: float, depth: float, jump_humidity: float,
                      entrainment_velocity: float, convective_velocity: float) -> float:  # fmt: skip
-    """Area fraction [0..0.5] of cumulus rooted in the mixed layer.
+    """Area fraction [0..0.5] of cumulus rooted in the mixed layer, 0 below a condensation level over the entrainment zone.
 
     A Gaussian-like humidity distribution at the layer's top, fraction = 0.5 + 0.36 atan(1.55 (q - q_sat) / sigma_q)
     (Cuijpers and Bechtold 1995; recalled), with the variance made by entrainment, sigma_q^2 = jump_q^2 (w_e / w*)
-    (h / delta) (Neggers, Stevens and Neelin 2006; recalled) and an entrainment zone delta of a quarter of h.
+    (h / delta) (Neggers, Stevens and Neelin 2006; recalled) and an entrainment zone delta of a quarter of h. The tail of
+    that distribution never ends, but the slab's air rises no higher than the zone's top: the fraction fades out as the
+    condensation level moves from the slab's top to the zone's (our choice).
     """
     if convective_velocity <= 0.0:
         return 0.0
+    rise = 0.5 * ENTRAINMENT_ZONE * depth
+    zone_temperature = top_temperature - GRAVITY * rise / CP_DRY
+    zone_pressure = top_pressure * (zone_temperature / top_temperature) ** (1.0 / KAPPA)
+    at_top = saturation_humidity(top_temperature, top_pressure)
+    at_zone = saturation_humidity(zone_temperature, zone_pressure)
+    reached = (humidity - at_zone) / max(at_top - at_zone, 1e-9)
+    if reached <= 0.0:
+        return 0.0
     spread = abs(jump_humidity) * 2.0 * math.sqrt(max(entrainment_velocity, 1e-4) / convective_velocity)
     spread = max(spread, 1e-5)
-    excess = (humidity - saturation_humidity(top_temperature, top_pressure)) / spread
-    return min(0.5, max(0.0, 0.5 + 0.36 * math.atan(1.55 * excess)))
+    excess = (humidity - at_top) / spread
+    return min(1.0, reached) * min(0.5, max(0.0, 0.5 + 0.36 * math.atan(1.55 * excess)))

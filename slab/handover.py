@@ -7,14 +7,18 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from slab.column import Aloft, distinct, origins, sample, tabulate
+from slab.column import Aloft, Sample, distinct, origins, sample, tabulate
 from slab.daytime import HEAT, MASS, VAPOUR, Offsets
 from slab.growth import slab_at
 from slab.night_grid import Column, Grid
 
 Array = NDArray[np.float64]
 
-SHARP = 0.01  # [m] half the thickness in which a sharp slab top is drawn
+# half the thickness in which a slab's top is drawn, as a share of its depth
+SHARP = 5e-6  # for budgets: keeps heat and vapour to round-off
+RESIDUAL = 0.05  # for a residual layer: a jump in no thickness would hold the next day's top like a step
+ENTRAINMENT_ZONE = 0.125  # for comparing with soundings: a quarter of the depth in all (Haghshenas and Mellado 2018)
+TOO_CLOSE = 0.01  # [m] levels this near the ramp's ends are dropped
 
 
 @dataclass(frozen=True, slots=True)
@@ -72,49 +76,45 @@ def nodes_now(air: Aloft, at: Offsets) -> Array:
 
 
 def column_after_slab(air: Aloft, later: Aloft | None, at: Offsets, y: list[float], wind: tuple[float, float],
-                      softened: bool) -> tuple[Aloft, float, float]:  # fmt: skip
+                      half: float) -> tuple[Aloft, float, float]:  # fmt: skip
     """The column under and above a slab of state ``y`` as one table; also the heat and vapour the table leaves out.
 
-    ``softened`` draws the jump as an entrainment zone a quarter of the depth thick (for comparing with soundings),
-    else it is as sharp as the table allows (a few centimetres).
+    ``half`` is the share of the depth over which the jump is drawn as a ramp on either side of the top: `SHARP`,
+    `RESIDUAL` or `ENTRAINMENT_ZONE`.
     """
     mass, height = np.asarray(air.mass), np.asarray(air.height)
     nodes = nodes_now(air, at)
     node_height = np.interp(nodes, mass, height)
     top = float(np.interp(y[MASS], mass, height))
-    half = 0.125 * top if softened else SHARP
-    low, high = top - half, min(top + half, float(node_height[-1]))
-    kept = node_height[(node_height < low - SHARP) | (node_height > high + SHARP)]
+    low, high = top - half * top, min(top + half * top, float(node_height[-1]))
+    kept = node_height[(node_height < low - TOO_CLOSE) | (node_height > high + TOO_CLOSE)]
     lid = [float(np.interp(air.cap, mass, height))] if air.cap < nodes[-1] else []
     levels = np.unique(np.concatenate((kept, [0.0, low, high], lid)))
     level_mass = np.interp(levels, height, mass)
     aloft = moved(air, later, at, level_mass)
-    here = sample(air, y[MASS], at.sunk)
-    if later is not None and at.later > 0.0:
-        then = sample(later, y[MASS], 0.0)
-        w = at.later
-        here = here._replace(
-            sum_theta=(1.0 - w) * here.sum_theta + w * then.sum_theta,
-            sum_humidity=(1.0 - w) * here.sum_humidity + w * then.sum_humidity,
-        )
-    slab = slab_at(y[MASS], y[HEAT], y[VAPOUR], here)
-    inside = levels <= low
+    slab = slab_at(y[MASS], y[HEAT], y[VAPOUR], _integrals(air, later, at, y[MASS]))
     values = (slab.theta + at.warmed, max(slab.humidity + at.moistened, 1e-7), *wind)
-    mixed = [np.where(inside, value, above) for value, above in zip(values, aloft, strict=True)]
+    share = np.clip((levels - low) / (high - low), 0.0, 1.0)
+    over = [float(np.interp(high, levels, above)) for above in aloft]
+    mixed = [
+        np.where(levels >= high, above, value + share * (end - value))
+        for value, above, end in zip(values, aloft, over, strict=True)
+    ]
     table = tabulate(level_mass, levels, *mixed, air.cap)
-    missing_heat, missing_vapour = 0.0, 0.0
-    if not softened:
-        missing_heat = _content_above(y, values[0], aloft[0], level_mass, top, table.sum_theta)
-        missing_vapour = _content_above(y, values[1], aloft[1], level_mass, top, table.sum_humidity)
-    return table, missing_heat, missing_vapour
+    i = int(np.searchsorted(levels, high))
+    whole = _integrals(air, later, at, float(level_mass[i]))
+    heat = y[HEAT] + whole.sum_theta + at.warmed * float(level_mass[i]) - table.sum_theta[i]
+    vapour = y[VAPOUR] + whole.sum_humidity + at.moistened * float(level_mass[i]) - table.sum_humidity[i]
+    return table, heat, vapour
 
 
-def _content_above(y: list[float], slab: float, aloft: Array, mass: Array, top: float, running: object) -> float:
-    """Content of slab and air aloft less what the table holds, up to the first table level above the slab."""
-    i = int(np.searchsorted(mass, y[MASS]))
-    at_top = float(np.interp(y[MASS], mass, aloft))
-    exact = slab * y[MASS] + 0.5 * (at_top + float(aloft[i])) * (float(mass[i]) - y[MASS])
-    return exact - float(np.asarray(running)[i])
+def _integrals(air: Aloft, later: Aloft | None, at: Offsets, mass: float) -> Sample:
+    """The air aloft at a mass level, with its integrals, moved toward a later profile where there is one."""
+    now = sample(air, mass, at.sunk)
+    if later is None or at.later <= 0.0:
+        return now
+    then, w = sample(later, mass, 0.0), at.later
+    return Sample(*((1.0 - w) * a + w * b for a, b in zip(now, then, strict=True)))
 
 
 def column_after_night(edges: Array, grid: Grid, state: Column, above: Aloft, later: Aloft | None,

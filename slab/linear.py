@@ -21,6 +21,7 @@ from slab.march import STANDARD, Control, advance, scratch
 
 KNOT = 120.0  # [s] the imposed flux is taken as linear over this time
 SMALLEST_DEPTH = 0.01  # [m] stands for a start at the ground
+FINE = STANDARD._replace(least_step=1e-7)  # a start without a jump grows without bound for an instant
 
 
 class LinearResult(NamedTuple):
@@ -37,7 +38,7 @@ class LinearResult(NamedTuple):
 def grow(*, depth: float, jump: float, gradient: float, heat_flux: Callable[[float], float], hours: float,
          closure: Closure, theta_ground: float = 290.0, vapour_flux: float = 0.0, humidity: float = 0.0,
          humidity_aloft: float = 0.0, humidity_gradient: float = 0.0, divergence: float = 0.0,
-         friction_velocity: float = 0.0, control: Control = STANDARD) -> LinearResult:  # fmt: skip
+         friction_velocity: float = 0.0, control: Control = FINE) -> LinearResult:  # fmt: skip
     """Grow a mixed layer into linear air at constant density.
 
     Parameters

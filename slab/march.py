@@ -15,7 +15,6 @@ from forcing.table import CLOUD, CLOUD_BASE, COLUMNS, LONGWAVE
 from slab.column import Aloft, as_numbers, height_of, mass_of, sample
 from slab.daytime import (
     HEAT,
-    LEAST_STEP,
     MASS,
     MEMBERS,
     THETA_TOLERANCE,
@@ -32,11 +31,13 @@ from slab.record import write_record
 Numbers = Sequence[float]
 
 RAN_TO_END, REACHED_TOP, FAILED, EVENING = 0, 1, 2, 3
+CLOUD_MEMORY = 1200.0  # [s] cumulus that shade follow the layer's eddies over about one turnover, h / w* (our choice)
 TOP_MARGIN = 0.995  # the slab has reached the top of the profile when it holds this share of the table's mass
 
 
 class Control(NamedTuple):
-    """Accuracy of the march: local depth tolerance [m], longest step [s], and spacing of the knots [s].
+    """Accuracy of the march: local depth tolerance [m], longest step [s], spacing of the
+    knots [s], shortest step [s].
 
     Forcing is linear between knots, and long-wave and shade are refreshed at each.
     """
@@ -44,6 +45,7 @@ class Control(NamedTuple):
     depth_tolerance: float
     longest_step: float
     knot: float = 600.0
+    least_step: float = 0.5
 
 
 STANDARD = Control(0.25, 300.0)
@@ -72,7 +74,7 @@ def heun_step(y: list[float], tau: float, step: float, span: float, row: Numbers
                    closure, work.memory)  # fmt: skip
     for i in range(MEMBERS):
         work.ahead[i] = y[i] + step * work.rate[i]
-    settle(work.ahead, y[MASS], tau + step, span, row, following, start, air, closure)
+    settle(work.ahead, tau + step, span, row, following, start, air, closure)
     guess_mass = work.ahead[MASS]
     if not guess_mass > 0.0:
         return math.inf, math.inf
@@ -81,7 +83,7 @@ def heun_step(y: list[float], tau: float, step: float, span: float, row: Numbers
                ground, thickness, closure, work.memory)  # fmt: skip
     for i in range(MEMBERS):
         work.ahead[i] = y[i] + 0.5 * step * (work.rate[i] + work.rate_ahead[i])
-    settle(work.ahead, y[MASS], tau + step, span, row, following, start, air, closure)
+    settle(work.ahead, tau + step, span, row, following, start, air, closure)
     mass = work.ahead[MASS]
     if not mass > 0.0:
         return math.inf, math.inf
@@ -89,14 +91,12 @@ def heun_step(y: list[float], tau: float, step: float, span: float, row: Numbers
 
 
 @kernel
-def settle(y: list[float], least: float, tau: float, span: float, row: Numbers, following: Numbers, start: Offsets,
-           air: Aloft, closure: Closure) -> None:  # fmt: skip
-    """Under encroachment the depth follows from heat alone; ``least`` is where the search starts."""
-    if closure.encroachment > 0.0:
+def settle(y: list[float], tau: float, span: float, row: Numbers, following: Numbers, start: Offsets, air: Aloft,
+           closure: Closure) -> None:  # fmt: skip
+    """Under encroachment the depth follows from heat alone, but is never less than the old top carried by the air."""
+    if closure.encroachment > 0.0 and y[MASS] > 0.0:
         at = offsets_at(start, row, following, span, tau)
-        if at.divergence != 0.0:
-            least = least * math.exp(-abs(at.divergence) * span)
-        y[MASS] = encroached_mass(air, y[HEAT], y[VAPOUR], at.sunk, least)
+        y[MASS] = encroached_mass(air, y[HEAT], y[VAPOUR], at.sunk, y[MASS])
 
 
 @kernel
@@ -120,8 +120,8 @@ def advance(y: list[float], step: float, span: float, row: Numbers, following: N
         error = max(in_depth / control.depth_tolerance, in_theta / (THETA_TOLERANCE * control.depth_tolerance / 0.25))
         if not in_depth + in_theta < 1e9:
             error = 100.0
-        if error > 1.0 and trial > LEAST_STEP:
-            step = max(LEAST_STEP, trial * max(0.2, 0.9 / math.sqrt(error)))
+        if error > 1.0 and trial > control.least_step:
+            step = max(control.least_step, trial * max(0.2, 0.9 / math.sqrt(error)))
             continue
         if not in_depth + in_theta < 1e9:
             return step, FAILED
@@ -160,7 +160,7 @@ def march(first: int, last: int, times: Numbers, rows: Sequence[list[float]], y:
         flow = tendencies(y, work.rate, 0.0, span, rows[k], rows[following], work.values, at, air, later, place,
                           ground, thickness, closure, work.memory)  # fmt: skip
         write_record(record[k], y, flow, at, place, ground, heights)
-        work.memory[3] = flow.cumulus
+        work.memory[3] += (flow.cumulus - work.memory[3]) * (1.0 - math.exp(-span / CLOUD_MEMORY))
         if flow.buoyancy_flux > 0.0:
             seen_upward = True
             downward = 0

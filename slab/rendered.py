@@ -11,7 +11,7 @@ from forcing.profile import Profile
 from slab.column import Aloft
 from slab.cycle import DAY, Part, Run
 from slab.daytime import EAST, HEAT, MASS, MEMBERS, NORTH, VAPOUR, Offsets
-from slab.handover import column_after_slab, moved, nodes_now
+from slab.handover import ENTRAINMENT_ZONE, SHARP, column_after_slab, moved, nodes_now
 
 
 def part_at(run: Run, knot: int) -> Part:
@@ -43,7 +43,8 @@ def profile_at(run: Run, knot: int, *, softened: bool = True) -> Profile:
         f = run.fields
         y[MASS], y[HEAT], y[VAPOUR] = f["mass"][knot], f["heat"][knot], f["vapour"][knot]
         y[EAST], y[NORTH] = f["east"][knot], f["north"][knot]
-        table, _, _ = column_after_slab(part.air, part.later, at, y, (y[EAST], y[NORTH]), softened)
+        table, _, _ = column_after_slab(part.air, part.later, at, y, (y[EAST], y[NORTH]),
+                                        ENTRAINMENT_ZONE if softened else SHARP)  # fmt: skip
         return _profile(run, knot, table)
     assert part.course is not None
     note = part.course.notes[knot]
