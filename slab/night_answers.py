@@ -68,7 +68,7 @@ def stress_depth(grid: Grid, state: Column, exchange: Numbers, ground: Link) -> 
         du = u[i + 1] - u[i]
         dv = v[i + 1] - v[i]
         here = exchange[i] * math.sqrt(du * du + dv * dv)
-        if here < target:
+        if here <= target:  # equal where there is no stress at all: a depth of nothing
             if below > here:
                 height += (below - target) / (below - here) * (grid.interface[i] - height)
             return height / (1.0 - STRESS_SHARE)
