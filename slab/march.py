@@ -8,7 +8,7 @@ from typing import NamedTuple
 
 import numpy as np
 
-from forcing.air import GRAVITY
+from forcing.air import GRAVITY, VIRTUAL
 from forcing.speed import kernel
 from forcing.surface import Ground
 from forcing.table import CLOUD, CLOUD_BASE, COLUMNS, LONGWAVE
@@ -31,7 +31,7 @@ from slab.record import write_record
 Numbers = Sequence[float]
 
 RAN_TO_END, REACHED_TOP, FAILED, EVENING = 0, 1, 2, 3
-CLOUD_MEMORY = 1200.0  # [s] cumulus that shade follow the layer's eddies over about one turnover, h / w* (our choice)
+KELVIN_PER_HUMIDITY = 300.0 * VIRTUAL  # [K] change of virtual theta with specific humidity
 TOP_MARGIN = 0.995  # the slab has reached the top of the profile when it holds this share of the table's mass
 
 
@@ -65,7 +65,8 @@ class Work(NamedTuple):
 def heun_step(y: list[float], tau: float, step: float, span: float, row: Numbers, following: Numbers, start: Offsets,
               air: Aloft, later: Aloft, place: Place, ground: Ground, thickness: Numbers, closure: Closure,
               work: Work, rate_known: bool) -> tuple[float, float]:  # fmt: skip
-    """Try one Heun step; the new state is left in ``work.ahead``. Returns local errors in depth [m] and theta [K].
+    """Try one Heun step; the new state is left in ``work.ahead``. Returns local errors in depth [m] and theta [K];
+    an error in humidity counts as the one in virtual theta that it makes.
 
     ``rate_known`` says that ``work.rate`` already holds the rates at the step's start.
     """
@@ -79,6 +80,7 @@ def heun_step(y: list[float], tau: float, step: float, span: float, row: Numbers
     if not guess_mass > 0.0:
         return math.inf, math.inf
     guess_heat = work.ahead[HEAT]
+    guess_vapour = work.ahead[VAPOUR]
     tendencies(work.ahead, work.rate_ahead, tau + step, span, row, following, work.values, start, air, later, place,
                ground, thickness, closure, work.memory)  # fmt: skip
     for i in range(MEMBERS):
@@ -87,7 +89,9 @@ def heun_step(y: list[float], tau: float, step: float, span: float, row: Numbers
     mass = work.ahead[MASS]
     if not mass > 0.0:
         return math.inf, math.inf
-    return abs(height_of(air, mass) - height_of(air, guess_mass)), abs(work.ahead[HEAT] - guess_heat) / mass
+    in_heat = abs(work.ahead[HEAT] - guess_heat)
+    in_vapour = KELVIN_PER_HUMIDITY * abs(work.ahead[VAPOUR] - guess_vapour)  # cumulus dry the slab within seconds
+    return abs(height_of(air, mass) - height_of(air, guess_mass)), max(in_heat, in_vapour) / mass
 
 
 @kernel
@@ -160,7 +164,7 @@ def march(first: int, last: int, times: Numbers, rows: Sequence[list[float]], y:
         flow = tendencies(y, work.rate, 0.0, span, rows[k], rows[following], work.values, at, air, later, place,
                           ground, thickness, closure, work.memory)  # fmt: skip
         write_record(record[k], y, flow, at, place, ground, heights)
-        work.memory[3] += (flow.cumulus - work.memory[3]) * (1.0 - math.exp(-span / CLOUD_MEMORY))
+        work.memory[3] = flow.cumulus
         if flow.buoyancy_flux > 0.0:
             seen_upward = True
             downward = 0
