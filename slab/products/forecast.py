@@ -27,8 +27,7 @@ COARSE = Control(8.0, 1800.0, 3600.0)  # accuracy of the reruns behind the effec
 OLD_HOURS = 12.0
 ARCHIVE_DAYS = 14.0  # an older release is a case from the archive, not a stale input
 FAR_KM, FAR_M = 150.0, 300.0
-STRATUS = 0.4  # cumulus fraction from which the layer counts as topped by stratus (our choice)
-FOG_LEVEL = 100.0  # [m] a condensation level this low by day means fog or stratus
+STRATUS, STRATUS_LASTS = 0.4, 3600.0  # cumulus fraction that, held this long [s], counts as a stratus top (our choice)
 HELD_HOURS = 24.0
 
 DEFINITIONS = {
@@ -116,8 +115,9 @@ def doubts(done: Run, now: datetime) -> list[dict[str, str]]:
 
 
 def _saturated(done: Run) -> bool:
-    f = done.fields
-    cloudy = bool(np.any(f["cumulus_fraction"][done.day] > STRATUS))
+    lasting = np.diff(done.time, append=done.time[-1])
+    covered = done.day & (done.fields["cumulus_fraction"] > STRATUS)
+    cloudy = float(np.sum(lasting[covered])) >= STRATUS_LASTS
     fog = any(
         note.fog_depth > 0.0 for part in done.parts if part.course is not None for note in part.course.notes.values()
     )

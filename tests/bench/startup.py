@@ -19,8 +19,8 @@ DAYLAYER = [sys.executable, "-c", "from slab.commands.main import main; main()"]
 CASES = {
     "import numpy (baseline)": (BASELINE, 1.0),
     "daylayer --help": ([*DAYLAYER, "--help"], 1.5),
-    "daylayer forecast --hours 12": ([*DAYLAYER, "forecast", "--hours", "12"], 4.0),
-    "daylayer forecast --hours 48": ([*DAYLAYER, "forecast", "--hours", "48"], 12.0),
+    "daylayer forecast --hours 12": ([*DAYLAYER, "forecast", "--accept-doubt", "--hours", "12"], 4.0),
+    "daylayer forecast --hours 48": ([*DAYLAYER, "forecast", "--accept-doubt", "--hours", "48"], 12.0),
 }
 
 
