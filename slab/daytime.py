@@ -56,6 +56,7 @@ MEMBERS = SURFACE_HEAT + 6
 
 SURFACE_LAYER = 0.1  # share of the mixed layer that is surface layer (AMS Glossary)
 STABLE_REFERENCE = 10.0  # [m] that top where the surface takes heat from a slab that has just stopped being fed (our choice)
+ENCROACHING = 0.02  # growth over w* where depth follows from heat alone; only spreads humidity under cumulus (our choice)
 LEAST_REFERENCE = 2.0  # [m] lowest height at which slab values stand for the surface layer's top
 THETA_TOLERANCE = 0.005  # [K] local error of slab temperature
 
@@ -251,7 +252,8 @@ def tendencies(y: Numbers, dy: list[float], tau: float, span: float, row: Number
     if place.cumulus > 0.0 and convective > 0.0:
         pressure = place.pressure - GRAVITY * mass
         warm = theta * (pressure / P_REFERENCE) ** KAPPA
-        cloud = cumulus_fraction(humidity, warm, pressure, depth, slab.jump_humidity, speed, convective)
+        growing = speed if closure.encroachment == 0.0 else ENCROACHING * convective
+        cloud = cumulus_fraction(humidity, warm, pressure, depth, slab.jump_humidity, growing, convective)
         vented = density * cloud * convective
     slab_budgets(y, dy, mass, density * speed, vented, heat_flux, vapour_flux, slab, at, air, later, place, exchange)
     if place.fluxes_given > 0.0 or place.kinematic > 0.0:
