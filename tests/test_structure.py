@@ -16,14 +16,17 @@ FLOORS = (
     (re.compile(r"forcing(\..*)?"), 0),
     (re.compile(r"slab\.(growth|column|tops|night|night_\w+)"), 1),
     (re.compile(r"slab\.cycle"), 2),
-    (re.compile(r"slab\.(pictures\w*|export)"), 3),
+    (re.compile(r"slab\.export"), 3),
     (re.compile(r"slab\.products(\..*)?"), 4),
-    (re.compile(r"slab\.commands(\..*)?"), 5),
+    (re.compile(r"slab\.pictures\w*"), 5),
+    (re.compile(r"slab\.commands(\..*)?"), 6),
 )
 """Modules that stand on no floor (helpers) may be used from any, but hand on what they import."""
 
 HEAVY = ("scipy", "matplotlib", "mpl_toolkits", "numba")
 MAY_IMPORT_HEAVY = {("forcing.speed", "numba")}
+DRAWS = re.compile(r"slab\.pictures\w*")
+"""Modules that draw import matplotlib at their top; nothing else may import them at its own."""
 LONGEST_FILE = 400
 LONGEST_FUNCTION = 60
 
@@ -158,13 +161,14 @@ def heavy_imports(source: str, module: str) -> list[str]:
         for one in imports(source, module)
         if one.top
         and not one.types
-        and one.target.split(".")[0] in HEAVY
+        and (one.target.split(".")[0] in HEAVY or DRAWS.fullmatch(one.target))
         and (module, one.target.split(".")[0]) not in MAY_IMPORT_HEAVY
+        and not DRAWS.fullmatch(module)
     ]
 
 
 def too_long(source: str, name: str) -> list[str]:
-    """Files over 400 lines and functions over 60."""
+    """Files over 400 lines and functions over 60, docstring apart."""
     faults = []
     length = len(source.splitlines())
     if length > LONGEST_FILE:
@@ -172,6 +176,8 @@ def too_long(source: str, name: str) -> list[str]:
     for node in ast.walk(ast.parse(source)):
         if isinstance(node, ast.FunctionDef | ast.AsyncFunctionDef):
             size = (node.end_lineno or node.lineno) - node.lineno + 1
+            if ast.get_docstring(node) is not None:
+                size -= (node.body[0].end_lineno or 0) - node.body[0].lineno + 1
             if size > LONGEST_FUNCTION:
                 faults.append(f"{name}, line {node.lineno}: {node.name} has {size} lines")
     return faults
@@ -246,10 +252,9 @@ def test_no_heavy_import_at_the_top(sources: dict[str, str]) -> None:
 
 
 def test_files_and_functions_stay_small() -> None:
-    paths = [*modules().values(), *sorted((ROOT / "tests").rglob("*.py"))]
     faults = [
         fault
-        for path in paths
+        for path in modules().values()
         for fault in too_long(path.read_text(encoding="utf-8"), path.relative_to(ROOT).as_posix())
     ]
     assert faults == []
@@ -281,7 +286,7 @@ BAD_ARROWS = {
     "growth uses cycle": {"slab.growth": "from slab.cycle import run", "slab.cycle": ""},
     "night part uses cycle": {"slab.night_step": "from . import cycle", "slab.cycle": ""},
     "cycle uses products": {"slab.cycle": "from .products.forecast import text", "slab.products.forecast": ""},
-    "pictures use products": {"slab.pictures_sky": "import slab.products.forecast", "slab.products.forecast": ""},
+    "products use pictures": {"slab.products.forecast": "import slab.pictures_sky", "slab.pictures_sky": ""},
     "products use commands": {"slab.products.forecast": "from slab.commands import main", "slab.commands.main": ""},
     "tops reach cycle by a helper": {
         "slab.tops": "import slab.helper",
@@ -299,14 +304,14 @@ def test_an_arrow_back_is_seen(bad: dict[str, str]) -> None:
 def test_right_arrows_are_left_alone() -> None:
     good = {
         "slab.commands.main": "def f():\n    from slab.products.forecast import text",
-        "slab.products.forecast": "from .. import cycle, pictures",
-        "slab.pictures": "import slab.cycle",
+        "slab.products.forecast": "from .. import cycle, export",
+        "slab.export": "import slab.cycle",
         "slab.cycle": "from slab.growth import step\nfrom forcing.air import exner",
         "slab.growth": "import forcing.air",
         "forcing.air": "import math",
     }
     graph = edges(good, types=True)
-    assert graph["slab.products.forecast"] == {"slab.cycle", "slab.pictures"}
+    assert graph["slab.products.forecast"] == {"slab.cycle", "slab.export"}
     assert arrows_back(graph) == []
     assert users_of_commands(graph) == []
     assert circles(graph) == []

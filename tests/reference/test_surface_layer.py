@@ -55,7 +55,7 @@ def test_form_near_neutral_and_spread_of_published_sets():
     # Dyer 1974: 1 + 5 zeta for weak stability; at zeta = +1 published sets run from 4.56 (Grachev et al. 2007) to 7 (Foken 2008)
     assert phi_momentum(0.01) == pytest.approx(1.05, rel=1e-3)
     assert 4.5 < phi_momentum(1.0) < 7.0
-    # (1 - 19.3 zeta)^(-1/4) = 0.4711 at -1: boundary-layer course MAQ-32306, lecture 14 (Hogstrom 1988)
+    # (1 - 19.3 zeta)^(-1/4) = 0.4711 at -1: boundary-layer course MAQ-32306, chapter 14 (Hogstrom 1988)
     assert phi_momentum(-1.0) == pytest.approx(0.4711, rel=0.06)
 
 
