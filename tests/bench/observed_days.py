@@ -28,7 +28,6 @@ from forcing.air import (
     GRAVITY,
     KAPPA,
     P_REFERENCE,
-    ZERO_CELSIUS,
     condensation_level,
     humidity_from_mixing_ratio,
     mixing_ratio_from_humidity,
@@ -42,6 +41,7 @@ from slab.products.events import CUMULUS_SEEN
 ZONE_TOP = 1.125  # top of the entrainment zone over the slab top: a zone of a quarter of the depth, half of it above
 CALM_LIMIT = 1.3
 SLACK = 1.0  # [m], accuracy of the march in depth
+CONDENSATION_SLACK = 0.01  # the slab cools upward by g/cp of dry air, the exact condensation level by that of moist air
 
 
 @dataclass(frozen=True, slots=True)
@@ -198,26 +198,44 @@ def _fed(day: Day) -> list[int]:
     """Knots in which all three runs have a slab that the ground feeds."""
     runs = (day.given, day.calm, day.encroachment)
     return [
-        k for k in range(len(day.given.time))
-        if all(one.day[k] and one.fields["buoyancy_flux"][k] > 0.0 and math.isfinite(one.fields["depth"][k]) for one in runs)
-    ]  # fmt: skip
+        k
+        for k in range(len(day.given.time))
+        if all(
+            one.day[k] and one.fields["buoyancy_flux"][k] > 0.0 and math.isfinite(one.fields["depth"][k])
+            for one in runs
+        )
+    ]
+
+
+def on_the_hour(second: float) -> bool:
+    """Whether a time [s since 1970] is a full hour."""
+    return (second / 3600.0) % 1.0 < 1e-6
 
 
 def order_checks(day: Day) -> list[Check]:
-    """The three checks, on every knot of the fed hours."""
+    """The three checks: the first two judged at full hours, beside the worst of any knot; the third at every knot."""
     knots = _fed(day)
+    hours = [k for k in knots if on_the_hour(day.given.time[k])]
     depth, calm, least = (one.fields["depth"] for one in (day.given, day.calm, day.encroachment))
-    short = max((float(least[k] - depth[k]) for k in knots), default=math.nan)
-    ratio = max((float((calm[k] - SLACK) / least[k]) for k in knots), default=math.nan)
+    short, short_any = (max(float(least[k] - depth[k]) for k in chosen) for chosen in (hours, knots))
+    ratio, ratio_any = (max(float((calm[k] - SLACK) / least[k]) for k in chosen) for chosen in (hours, knots))
     cumulus = [k for k in knots if day.given.fields["cumulus_fraction"][k] > CUMULUS_SEEN]
-    early = max((condensation(day.given, k) - ZONE_TOP * float(depth[k]) for k in cumulus), default=math.nan)
+    early = max((1.0 - ZONE_TOP * float(depth[k]) / condensation(day.given, k) for k in cumulus), default=math.nan)
     return [
-        Check("at least the encroachment depth", short <= SLACK, f"largest shortfall {max(short, 0.0):.0f} m"),
-        Check(f"at most {CALM_LIMIT} times it in calm air", ratio <= CALM_LIMIT, f"largest ratio {ratio:.3f}"),
+        Check(
+            "at least the encroachment depth",
+            short <= SLACK,
+            f"largest shortfall {max(short, 0.0):.0f} m (every 10 minutes: {max(short_any, 0.0):.0f} m)",
+        ),
+        Check(
+            f"at most {CALM_LIMIT} times it in calm air",
+            ratio <= CALM_LIMIT,
+            f"largest ratio {ratio:.3f} (every 10 minutes: {ratio_any:.3f})",
+        ),
         Check(
             f"cumulus (over {100.0 * CUMULUS_SEEN:.0f} %) only with the entrainment zone over the condensation level",
-            not cumulus or early <= SLACK,
-            f"zone short of it by {max(early, 0.0):.0f} m at most" if cumulus else "no cumulus",
+            not cumulus or early <= CONDENSATION_SLACK,
+            f"zone short of it by {100.0 * max(early, 0.0):.1f} % at most" if cumulus else "no cumulus",
         ),
     ]
 
@@ -229,7 +247,7 @@ def table(day: Day) -> list[str]:
         f"{'':<8}{'W m-2':>6}{'W m-2':>6} |{'m':>7}{'m':>7}{'m':>7} |{'K':>8}{'g/kg':>7}{'m':>9}{'m':>10}{'%':>9}",
     ]
     for k, second in enumerate(day.given.time):
-        if (second / 3600.0) % 1.0 > 1e-6 and k not in (0, len(day.given.time) - 1):
+        if not on_the_hour(second) and k not in (0, len(day.given.time) - 1):
             continue
         f = {name: float(values[k]) for name, values in day.given.fields.items()}
         hour = (second / 3600.0 + day.case.offset) % 24.0
