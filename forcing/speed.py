@@ -41,8 +41,8 @@ if COMPILED:
 
     def kernel(function: F) -> F:
         """Compile a kernel (cached on disk, without the interpreter lock)."""
-        compiled: F = numba.njit(cache=True, nogil=True, error_model="numpy")(function)
-        return compiled
+        compiled: Any = numba.njit(cache=True, nogil=True, error_model="numpy")(function)
+        return compiled  # type: ignore[no-any-return]
 
 else:
 

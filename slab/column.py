@@ -219,20 +219,27 @@ def _weighted(mass: NDArray[np.float64], values: NDArray[np.float64], cap: float
     return as_numbers(total), as_numbers(exps), as_numbers(logs)
 
 
-def as_numbers(values: NDArray[np.float64]) -> Numbers:
+def as_numbers(values: NDArray[np.float64]) -> list[float]:
     """Hand an array to kernels: plain Python is several times faster on lists than on arrays."""
     if COMPILED:
         return np.ascontiguousarray(values, dtype=np.float64)  # type: ignore[return-value]
-    return values.tolist()  # type: ignore[no-any-return]
+    plain: list[float] = values.tolist()
+    return plain
 
 
-def tabulate(mass: NDArray[np.float64], height: NDArray[np.float64], theta: NDArray[np.float64],
-             humidity: NDArray[np.float64], u: NDArray[np.float64], v: NDArray[np.float64], cap: float) -> Aloft:  # fmt: skip
-    """Build the table from arrays (n,) of increasing mass [kg m-2] and height [m above ground]."""
+def tabulate(mass: NDArray[np.float64], height: NDArray[np.float64], values: Sequence[NDArray[np.float64]],
+             cap: float) -> Aloft:  # fmt: skip
+    """Build the table from arrays (n,) of increasing mass [kg m-2] and height [m above ground].
+
+    ``values`` holds theta [K], humidity [kg kg-1], u and v [m s-1], each (n,).
+    """
+    theta, humidity, u, v = values
     st, et, lt = _weighted(mass, theta, cap)
     sq, eq, lq = _weighted(mass, humidity, cap)
-    plain = [as_numbers(x) for x in (height, mass, theta, humidity, u, v)]
-    return Aloft(*plain, st, sq, et, eq, lt, lq, cap)
+    return Aloft(
+        as_numbers(height), as_numbers(mass), as_numbers(theta), as_numbers(humidity), as_numbers(u), as_numbers(v),
+        st, sq, et, eq, lt, lq, cap,
+    )  # fmt: skip
 
 
 def distinct(levels: NDArray[np.float64]) -> NDArray[np.float64]:
@@ -254,7 +261,7 @@ def from_profile(profile: Profile) -> Aloft:
     pressure = pressure_by_theta(levels, theta, humidity, profile.surface_pressure)
     mass = (pressure[0] - pressure) / GRAVITY
     cap = float(np.interp(SINKING_CAP_HEIGHT, levels, mass)) if top > SINKING_CAP_HEIGHT else 10.0 * float(mass[-1])
-    return tabulate(mass, levels, theta, humidity, u, v, cap)
+    return tabulate(mass, levels, (theta, humidity, u, v), cap)
 
 
 def on_same_levels(air: Aloft, other: Profile) -> Aloft:
@@ -264,7 +271,7 @@ def on_same_levels(air: Aloft, other: Profile) -> Aloft:
     theta, humidity, u, v = (
         np.interp(mass, np.asarray(later.mass), np.asarray(x)) for x in (later.theta, later.humidity, later.u, later.v)
     )
-    return tabulate(mass, np.asarray(air.height), theta, humidity, u, v, air.cap)
+    return tabulate(mass, np.asarray(air.height), (theta, humidity, u, v), air.cap)
 
 
 def linear(*, theta_ground: float, gradient: float, top: float = 20000.0, humidity_ground: float = 0.0,
@@ -274,4 +281,4 @@ def linear(*, theta_ground: float, gradient: float, top: float = 20000.0, humidi
     zero = np.zeros_like(levels)
     theta = theta_ground + gradient * levels
     humidity = humidity_ground + humidity_gradient * levels
-    return tabulate(levels, levels, theta, humidity, zero, zero, 10.0 * top)
+    return tabulate(levels, levels, (theta, humidity, zero, zero), 10.0 * top)

@@ -177,10 +177,9 @@ def _by_day(stage: _Stage, first: int, start: Handover) -> tuple[Part, int, Hand
     air = start.air
     later, weight = stage.later_on(air, first)
     for row, value in zip(stage.rows, weight, strict=True):
-        row[LATER_WEIGHT] = float(value)  # type: ignore[index]
+        row[LATER_WEIGHT] = float(value)
     mass = first_mass(air)
-    y = as_numbers(np.zeros(MEMBERS))
-    state: list[float] = y  # type: ignore[assignment]
+    state = as_numbers(np.zeros(MEMBERS))
     state[MASS], state[HEAT], state[VAPOUR] = mass, start.heat, start.vapour
     inside = np.asarray(air.mass) <= mass
     state[EAST], state[NORTH] = (float(np.mean(np.asarray(x)[inside])) for x in (air.u, air.v))
@@ -195,9 +194,9 @@ def _by_day(stage: _Stage, first: int, start: Handover) -> tuple[Part, int, Hand
     last = len(stage.times) - 1
     at = Offsets(0.0, 0.0, 0.0, 0.0, 0.0, 0.0)
     reached, reason, at = march(
-        first, last, stage.times, stage.rows, state, at, air, later or air, stage.place, stage.ground,  # type: ignore[arg-type]
+        first, last, stage.times, stage.rows, state, at, air, later or air, stage.place, stage.ground,
         as_numbers(np.array(soil_layers(stage.ground))), stage.closure, stage.control, work, sky,
-        as_numbers(np.array(stage.heights)), stage.record,  # type: ignore[arg-type]
+        as_numbers(np.array(stage.heights)), stage.record,
     )  # fmt: skip
     if reason == FAILED:
         raise ModelError(f"the mixed layer could not be stepped at knot {reached}", remedy="check wind and temperature input")
@@ -219,7 +218,7 @@ def _by_night(stage: _Stage, first: int, start: Handover) -> tuple[Part, int, Ha
     sky = NightSky(*stage.column_now(start.air), stage.anchor, given=stage.knots.longwave_given)
     course = through_night(
         first, len(stage.times) - 1, stage.knots.time, table, start, stage.ground, stage.place, sky, stage.heating,
-        later, stage.heights, stage.record,  # type: ignore[arg-type]
+        later, stage.heights, stage.record,
     )  # fmt: skip
     return Part(NIGHT, first, course.reached, start.air, later, course), course.reason, course.handover
 

@@ -56,7 +56,7 @@ def velocity_scale(depth: float, buoyancy_flux: float, theta: float) -> float:
     """Convective velocity w* [m s-1] from the kinematic virtual flux [K m s-1] (Deardorff 1970); 0 where it is down."""
     if buoyancy_flux <= 0.0:
         return 0.0
-    return (GRAVITY * depth * buoyancy_flux / theta) ** (1.0 / 3.0)
+    return math.exp(math.log(GRAVITY * depth * buoyancy_flux / theta) / 3.0)
 
 
 @kernel

@@ -100,7 +100,7 @@ def column_after_slab(air: Aloft, later: Aloft | None, at: Offsets, y: list[floa
         np.where(levels >= high, above, value + share * (end - value))
         for value, above, end in zip(values, aloft, over, strict=True)
     ]
-    table = tabulate(level_mass, levels, *mixed, air.cap)
+    table = tabulate(level_mass, levels, mixed, air.cap)
     i = int(np.searchsorted(levels, high))
     whole = _integrals(air, later, at, float(level_mass[i]))
     heat = y[HEAT] + whole.sum_theta + at.warmed * float(level_mass[i]) - table.sum_theta[i]
@@ -130,7 +130,7 @@ def column_after_night(edges: Array, grid: Grid, state: Column, above: Aloft, la
     columns = []
     for cells, air in zip(state[:4], upper, strict=True):
         columns.append(np.concatenate(([cells[0]], np.asarray(cells), air)))
-    table = tabulate(mass, levels, *columns, above.cap)
+    table = tabulate(mass, levels, columns, above.cap)
     held = sample(table, float(cell_mass[-1]), 0.0)
     heat = float(np.dot(grid.mass, state.theta)) - held.sum_theta
     vapour = float(np.dot(grid.mass, state.humidity)) - held.sum_humidity

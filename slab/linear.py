@@ -77,9 +77,9 @@ def grow(*, depth: float, jump: float, gradient: float, heat_flux: Callable[[flo
     start = max(depth, SMALLEST_DEPTH)
     here = sample(air, start, 0.0)
     y = as_numbers(np.zeros(MEMBERS))
-    y[MASS] = start  # type: ignore[index]
-    y[HEAT] = start * (here.theta - jump) - here.sum_theta  # type: ignore[index]
-    y[VAPOUR] = start * (humidity if depth > 0.0 else here.humidity) - here.sum_humidity  # type: ignore[index]
+    y[MASS] = start
+    y[HEAT] = start * (here.theta - jump) - here.sum_theta
+    y[VAPOUR] = start * (humidity if depth > 0.0 else here.humidity) - here.sum_humidity
     at = Offsets(0.0, 0.0, 0.0, 0.0, 0.0, divergence)
     work = scratch()
     ground, thickness = no_ground()

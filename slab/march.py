@@ -206,12 +206,12 @@ def shade_of(cloud: float, cumulus: float) -> float:
     Given cloud and cumulus overlap at random: N = 1 - (1 - N_given)(1 - N_cumulus).
     """
     joint = 1.0 - (1.0 - cloud) * (1.0 - cumulus)
-    return 1.0 - (1.0 - 0.75 * joint**3.4) / (1.0 - 0.75 * cloud**3.4)
+    return 1.0 - (1.0 - 0.75 * math.pow(joint, 3.4)) / (1.0 - 0.75 * math.pow(cloud, 3.4))
 
 
 def scratch() -> Work:
     """Scratch sequences for one march; ``memory`` holds skin temperature, 1/L, shade and
     cumulus fraction of the last radiation step."""
     blank = [as_numbers(np.zeros(n)) for n in (MEMBERS, MEMBERS, MEMBERS, COLUMNS, 4)]
-    blank[4][0] = 290.0  # type: ignore[index]
-    return Work(*blank)  # type: ignore[arg-type]
+    blank[4][0] = 290.0
+    return Work(*blank)

@@ -8,8 +8,8 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from forcing.air import GRAVITY, KAPPA, P_REFERENCE, VIRTUAL
-from forcing.longwave import prata_emissivity
+from forcing.air import GRAVITY, KAPPA, P_REFERENCE, STEFAN_BOLTZMANN, VIRTUAL, vapour_pressure
+from forcing.emissivity import prata_emissivity
 from forcing.scenario_types import Scenario
 from forcing.sun import solar_position
 from forcing.surface import Ground, periodic_soil, soil_layers
@@ -26,6 +26,8 @@ SOIL_STEP = 1800.0  # [s]
 YESTERDAY_HEIGHT = 1000.0  # [m] where the residual layer's theta is read
 DAILY_RANGE = 12.0  # [K] assumed between last night and this afternoon where the release itself is an afternoon one
 HOTTEST_SOLAR_HOUR = 15.0
+CALM_DAY = 2.0  # [m s-1] least wind of the days before
+MIXED_DEPTH, READ_HEIGHT = 500.0, 20.0  # [m] depth for their gusts, and where their air is read (assumed)
 
 
 @dataclass(frozen=True, slots=True)
@@ -96,16 +98,28 @@ def ground_start(scenario: Scenario, ground: Ground) -> GroundStart:
     hour = _solar_hour(scenario, time)
     air = deep + 0.5 * (warmest - coldest) * np.cos((hour - HOTTEST_SOLAR_HOUR) * math.pi / 12.0)
     humidity = np.full(time.shape, float(np.mean(profile.humidity[profile.height <= 500.0])))
-    vapour = float(humidity[0]) * profile.surface_pressure / 0.622
+    vapour = vapour_pressure(float(humidity[0]), profile.surface_pressure)
     cloud = scenario.weather.sample("cloud_fraction", time)
-    clear = np.array([prata_emissivity(vapour, float(t)) * 5.670374e-8 * t**4 for t in air])
-    longwave = clear + cloud * (1.0 - clear / (5.670374e-8 * air**4)) * 5.670374e-8 * air**4
+    clear = np.array([prata_emissivity(vapour, float(t)) * STEFAN_BOLTZMANN * t**4 for t in air])
+    longwave = clear + cloud * (1.0 - clear / (STEFAN_BOLTZMANN * air**4)) * STEFAN_BOLTZMANN * air**4
     speed = float(np.mean(np.hypot(profile.u, profile.v)[profile.height <= 300.0]))
     out = as_numbers(np.zeros(len(soil_layers(ground))))
-    tables = (shortwave(scenario, time), longwave, air, humidity, np.full(time.shape, max(speed, 2.0)),
-              np.full(time.shape, 500.0), anthropogenic_heat(scenario, time))  # fmt: skip
     skin = periodic_soil(
-        ground, soil_layers(ground), *(as_numbers(x) for x in tables), 20.0, 20.0, profile.surface_pressure, deep,
-        SOIL_STEP, SOIL_DAYS, out,
-    )  # type: ignore[arg-type]  # fmt: skip
+        ground,
+        soil_layers(ground),
+        as_numbers(shortwave(scenario, time)),
+        as_numbers(longwave),
+        as_numbers(air),
+        as_numbers(humidity),
+        as_numbers(np.full(time.shape, max(speed, CALM_DAY))),
+        as_numbers(np.full(time.shape, MIXED_DEPTH)),
+        as_numbers(anthropogenic_heat(scenario, time)),
+        READ_HEIGHT,
+        READ_HEIGHT,
+        profile.surface_pressure,
+        deep,
+        SOIL_STEP,
+        SOIL_DAYS,
+        out,
+    )
     return GroundStart(tuple(float(x) for x in out), float(skin), deep, coldest, warmest)

@@ -39,7 +39,7 @@ def first_day(run: Run) -> Part | None:
     """The first stretch of day that lasts at least an hour, else the first one, else None."""
     days = [part for part in run.parts if part.kind == DAY]
     long = [part for part in days if run.time[part.last] - run.time[part.first] >= 3600.0]
-    return (long or days or [None])[0]
+    return next(iter(long or days), None)
 
 
 def morning(run: Run) -> Morning | None:
