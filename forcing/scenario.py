@@ -55,6 +55,7 @@ __all__ = [
     "bundled_names",
     "from_flags",
     "load",
+    "read_settings",
     "with_run",
     "with_setting",
     "with_step",
@@ -72,13 +73,30 @@ def load(path: str | Path) -> Scenario:
     """
     file = Path(path)
     text = read_text(file, error=ScenarioError)
+    return build(_parsed(text, file), folder=file.parent, source=str(file), text=text)
+
+
+def read_settings(path: str | Path) -> dict[str, Any]:
+    """Plain values of a scenario file with its layout checked, but no table read and nothing built.
+
+    Raises
+    ------
+    ScenarioError
+        No such file, no TOML, or an unknown section or key.
+    """
+    file = Path(path)
+    settings = _parsed(read_text(file, error=ScenarioError), file)
+    check_layout(settings, str(file))
+    return settings
+
+
+def _parsed(text: str, file: Path) -> dict[str, Any]:
     try:
-        settings = tomllib.loads(text)
+        return tomllib.loads(text)
     except tomllib.TOMLDecodeError as problem:
         raise ScenarioError(
             f"is not valid TOML: {problem}", place=str(file), remedy="texts need quotes, sections need [brackets]"
         ) from None
-    return build(settings, folder=file.parent, source=str(file), text=text)
 
 
 def build(settings: Settings, *, folder: Path, source: str, text: str = "", parts: Parts | None = None) -> Scenario:

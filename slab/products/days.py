@@ -24,8 +24,9 @@ from forcing.sounding import Profile, Sounding
 from forcing.weather import Weather
 
 ALL = "all"
-MORNING = (2.0, 10.0)  # [h] solar time between which a release counts as a morning one
-BEST_HOUR = 6.0  # [h] solar time; of several releases of one morning the nearest to it is used
+EARLIEST = -2.0  # [h] solar time; a release from here to LATEST is before the day (22 h of the evening before)
+LATEST = 10.0  # [h] solar time
+BEST_HOUR = 5.0  # [h] solar time; of several releases before one day the nearest to it is used
 CLEAR_BELOW = 0.85  # [1] relative humidity that no level of a clear morning reaches (our choice)
 CLEAR_LAYER = (500.0, 8000.0)  # [m above ground] where it is looked at
 DAYS_FILE, PROFILES_FILE = "typical_days.csv", "typical_profiles.csv"
@@ -100,7 +101,7 @@ def _built(settings: Settings, name: str, sounding: Sounding) -> Scenario:
 
 
 def profile_days(place: Path, settings: Settings, *, months: Sequence[int] = (), clear_only: bool = False) -> list[Day]:
-    """One day for every morning release of a folder of profiles, or of one file with many.
+    """One day for every release of the night or morning in a folder of profiles, or of one file with many.
 
     Parameters
     ----------
@@ -124,9 +125,15 @@ def profile_days(place: Path, settings: Settings, *, months: Sequence[int] = (),
     weather = settings.get("weather")
     if isinstance(weather, Mapping) and "file" in weather:
         raise ScenarioError(
-            "a weather file holds one day only", place="--profiles", remedy="give constants in [weather], or drop the file"
+            "a weather file holds one day only",
+            place="--profiles",
+            remedy="give constants in [weather], or drop the file",
         )
-    files = [place] if place.is_file() else sorted(p for p in place.glob("*") if p.is_file() and p.suffix.lower() != ".toml")
+    files = (
+        [place]
+        if place.is_file()
+        else sorted(p for p in place.glob("*") if p.is_file() and p.suffix.lower() != ".toml")
+    )
     if not files:
         raise ScenarioError(
             "no profiles there", place=f"--profiles {place}", remedy="name a folder of profiles, or a file with many"
@@ -161,9 +168,15 @@ def _sort_in(release: Sounding, file: Path, settings: Settings, months: Sequence
     if months and solar.month not in months:
         days.append((f"{solar:%Y-%m-%d}", Day(f"{when:%Y-%m-%dT%H:%MZ}", None, "month not asked for")))
         return
-    hour = solar.hour + solar.minute / 60.0
-    if not MORNING[0] <= hour <= MORNING[1]:
-        days.append((f"{solar:%Y-%m-%d}", Day(f"{when:%Y-%m-%dT%H:%MZ}", None, f"not a morning release ({hour:.0f} h solar)")))
+    hour = (solar.hour + solar.minute / 60.0 - EARLIEST) % 24.0 + EARLIEST
+    solar = solar - timedelta(hours=EARLIEST)  # its date is that of the day to come
+    if hour > LATEST:
+        days.append(
+            (
+                f"{solar:%Y-%m-%d}",
+                Day(f"{when:%Y-%m-%dT%H:%MZ}", None, f"not of the night or morning ({hour:.0f} h solar)"),
+            )
+        )
         return
     key, gap = (f"{solar:%Y-%m-%d}", release.station), abs(hour - BEST_HOUR)
     if key not in morning or gap < morning[key][0]:
