@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Mapping
 
 from forcing.cover import LIMITS, Cover, adapt, cover, mixture, names
@@ -47,7 +48,9 @@ def read_own_covers(settings: Mapping[str, object], file: str) -> dict[str, Cove
 
 
 def resolve(what: str | Mapping[str, float], own: Mapping[str, Cover], *, place: str = "") -> Cover:
-    """Cover of a name, or mixture of ``{name: area fraction}``, among the built-in covers and the user's own.
+    """Cover of a name or mixture, among the built-in covers and the user's own.
+
+    A mixture is ``{name: area fraction}`` or text such as ``"70% short grass + 30% heath"``.
 
     Raises
     ------
@@ -55,6 +58,8 @@ def resolve(what: str | Mapping[str, float], own: Mapping[str, Cover], *, place:
         Unknown name, or area fractions that do not sum to 1.
     """
     try:
+        if isinstance(what, str) and "%" in what:
+            what = _shares(what)
         if isinstance(what, str):
             return own.get(spelled(what)) or cover(what)
         shares: dict[Cover, float] = {}
@@ -65,3 +70,18 @@ def resolve(what: str | Mapping[str, float], own: Mapping[str, Cover], *, place:
     except CoverError as problem:
         also = f"; your own: {', '.join(own)}" if own and "unknown land cover" in problem.problem else ""
         raise CoverError(problem.problem, place=place, remedy=f"{problem.remedy}{also}") from None
+
+
+def _shares(text: str) -> dict[str, float]:
+    """Area fractions by name of a mixture that is written with percentages."""
+    shares: dict[str, float] = {}
+    for part in text.split("+"):
+        share, percent, name = part.partition("%")
+        try:
+            value = float(share) / 100.0
+        except ValueError:
+            value = math.nan
+        if not percent or not name.strip() or not math.isfinite(value):
+            raise CoverError(f"'{part.strip()}' is no part of a mixture", remedy='write "70% short grass + 30% heath"')
+        shares[name.strip()] = shares.get(name.strip(), 0.0) + value
+    return shares

@@ -2,7 +2,7 @@
 
 A change is one or more steps, parted by commas, with a name before a colon where one is wanted::
 
-    cover irrigated crop              the whole area becomes this cover
+    cover irrigated crop              the whole area becomes this cover, or a mixture: cover 70% heath + 30% stubble
     30% deciduous forest              that part of the area does; the rest stays as it was
     canopy +10%                       the same with trees (deciduous forest)
     irrigation                        the soil is kept wet

@@ -10,7 +10,6 @@ from collections.abc import Mapping, Sequence
 from typing import Any
 
 from forcing.cover import LIMITS, Cover, Property, anthropogenic_course, soil_resistance, table
-from forcing.errors import CoverError
 from forcing.own_covers import resolve, spelled
 from slab.products.changes import BLENDING
 
@@ -113,7 +112,7 @@ def covers_document(wanted: Sequence[str] = (), own: Mapping[str, Cover] | None 
     return {
         "schema": SCHEMA,
         "kind": "covers",
-        "covers": [_entry(_found(name, mine)) for name in names],
+        "covers": [_entry(resolve(name, mine)) for name in names],
         "notes": {
             "blending": BLENDING,
             "soil_moisture": "conductivity and heat capacity are linear between dry (wilting point) and wet (field capacity)",
@@ -121,23 +120,6 @@ def covers_document(wanted: Sequence[str] = (), own: Mapping[str, Cover] | None 
             "anthropogenic_course": {str(h): round(anthropogenic_course(float(h)), 3) for h in range(24)},
         },
     }
-
-
-def _found(name: str, own: Mapping[str, Cover]) -> Cover:
-    """A cover by name, or a mixture written with percentages."""
-    if "%" not in name:
-        return resolve(name, own, place="covers")
-    shares: dict[str, float] = {}
-    for part in name.split("+"):
-        share, percent, cover = part.partition("%")
-        try:
-            value = float(share) / 100.0
-        except ValueError:
-            value = math.nan
-        if not percent or not cover.strip() or math.isnan(value):
-            raise CoverError(f"'{part.strip()}' is no part of a mixture", remedy='write "70% short grass + 30% heath"')
-        shares[cover.strip()] = shares.get(cover.strip(), 0.0) + value
-    return resolve(shares, own, place="covers")
 
 
 def _entry(cover: Cover) -> dict[str, Any]:
