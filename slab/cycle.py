@@ -41,6 +41,7 @@ Array = NDArray[np.float64]
 HEIGHTS = (1.5, 2.0, 9.0, 10.0)  # [m] temperatures kept beside the screen's
 STOPS = {RAN_TO_END: "end of the run", REACHED_TOP: "top of the profile reached"}
 DAY, NIGHT = "day", "night"
+AT_START, AT_DAWN = 2, 6  # knots that a slab waits for a first upward flux: one started at dusk never gets it
 
 
 @dataclass(frozen=True, slots=True)
@@ -172,8 +173,8 @@ class _Stage:
         return on_same_levels(air, self.scenario.later), relative
 
 
-def _by_day(stage: _Stage, first: int, start: Handover) -> tuple[Part, int, Handover]:
-    """March the slab from knot ``first``; returns the part, why it ended and what it hands over."""
+def _by_day(stage: _Stage, first: int, start: Handover, patience: int) -> tuple[Part, int, Handover]:
+    """March the slab from knot ``first``; returns the part, why it ended and what it hands over. See `march`."""
     air = start.air
     later, weight = stage.later_on(air, first)
     for row, value in zip(stage.rows, weight, strict=True):
@@ -196,7 +197,7 @@ def _by_day(stage: _Stage, first: int, start: Handover) -> tuple[Part, int, Hand
     reached, reason, at = march(
         first, last, stage.times, stage.rows, state, at, air, later or air, stage.place, stage.ground,
         as_numbers(np.array(soil_layers(stage.ground))), stage.closure, stage.control, work, sky,
-        as_numbers(np.array(stage.heights)), stage.record,
+        as_numbers(np.array(stage.heights)), stage.record, patience,
     )  # fmt: skip
     if reason == FAILED:
         raise ModelError(f"the mixed layer could not be stepped at knot {reached}", remedy="check wind and temperature input")
@@ -268,7 +269,11 @@ def run(scenario: Scenario, *, control: Control = STANDARD, heights: tuple[float
     last = len(stage.times) - 1
     first, reason = 0, EVENING
     while first < last and reason in (EVENING, MORNING):
-        part, reason, handover = (_by_night if night else _by_day)(stage, first, handover)
+        if night:
+            part, reason, handover = _by_night(stage, first, handover)
+        else:
+            patience = last + 1 if by_day else (AT_START if first == 0 else AT_DAWN)
+            part, reason, handover = _by_day(stage, first, handover, patience)
         parts.append(part)
         first, night = part.last, not night
     return _collect(stage, tuple(parts), STOPS.get(reason, "end of the run"), soil)

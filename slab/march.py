@@ -145,12 +145,12 @@ def advance(y: list[float], step: float, span: float, row: Numbers, following: N
 def march(first: int, last: int, times: Numbers, rows: Sequence[list[float]], y: list[float], start: Offsets,
           air: Aloft, later: Aloft, place: Place, ground: Ground, thickness: Numbers, closure: Closure,
           control: Control, work: Work, sky: SkyColumn, heights: Numbers,
-          record: Sequence[list[float]]) -> tuple[int, int, Offsets]:  # fmt: skip
+          record: Sequence[list[float]], patience: int) -> tuple[int, int, Offsets]:  # fmt: skip
     """March from knot ``first`` to ``last``, recording every knot, until the surface stops feeding the layer.
 
     Returns the knot reached, why it ended there, and the offsets of the air aloft at that knot. It ends at the second
     knot in a row with a downward virtual flux after one with an upward flux, so that a passing cloud does not end the
-    day; the state then is that of the knot.
+    day; the state then is that of the knot. Where no flux has been upward yet, ``patience`` knots are waited for one.
     """
     k = first
     at = start
@@ -172,7 +172,7 @@ def march(first: int, last: int, times: Numbers, rows: Sequence[list[float]], y:
             downward += 1
         if k == last:
             return k, RAN_TO_END, at
-        if seen_upward and downward >= 2:
+        if downward >= (2 if seen_upward else patience):
             return k, EVENING, at
         step, reason = advance(y, step, span, rows[k], rows[k + 1], at, air, later, place, ground, thickness, closure,
                                control, work, True)  # fmt: skip

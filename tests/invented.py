@@ -12,10 +12,11 @@ import numpy as np
 from forcing.bundled import bundled
 from forcing.cover import cover as cover_of
 from forcing.scenario import load
+from forcing.scenario_parts import UNKNOWN_WIND_FROM_DEG, UNKNOWN_WIND_M_S
 from forcing.scenario_types import RunOptions, Scenario, Site
 from forcing.series import Series
 from forcing.sounding import Profile
-from forcing.weather import FluxTable, Weather
+from forcing.weather import DEFAULTS, FluxTable, Weather
 
 DAWN = datetime(2024, 6, 1, 11, tzinfo=UTC)
 
@@ -39,11 +40,16 @@ def scenario(
     **run: float | str,
 ) -> Scenario:
     """Scenario of an invented column; the weather is constants by name, the run options as in [run]."""
+    defaults = dict(DEFAULTS)
+    if not profile.wind_known:
+        defaults |= {
+            "pressure_gradient_wind_m_s": UNKNOWN_WIND_M_S, "pressure_gradient_wind_from_deg": UNKNOWN_WIND_FROM_DEG
+        }
     column = replace(profile, valid=valid, latitude=latitude, longitude=longitude)
     return Scenario(
         title="invented", site=Site("invented", latitude, longitude, profile.elevation, "UTC"), profile=column,
         later=later, cover=cover_of(cover), soil_moisture=soil_moisture, fluxes=fluxes,
-        weather=Weather(constants=weather or {}), run=RunOptions(**run), limits=None, assumptions=(),  # type: ignore[arg-type]
+        weather=Weather(constants=weather or {}, defaults=defaults), run=RunOptions(**run), limits=None, assumptions=(),  # type: ignore[arg-type]
         source="invented", text="", original=column, settings=_pattern().settings,
     )  # fmt: skip
 
