@@ -34,14 +34,14 @@ class Case(NamedTuple):
     scenario: Scenario
 
 
-def _morning(rng: np.random.Generator, *, residual: bool, wind: float, moist: float, pressure: float,
+def _morning(rng: np.random.Generator, *, residual: bool, coolest: float, wind: float, moist: float, pressure: float,
              elevation: float) -> Profile:  # fmt: skip
     """A surface inversion under a stable or a residual layer, a cap, and free air."""
     inversion, strength = rng.uniform(80.0, 350.0), rng.uniform(2.0, 9.0)
     residual_top = inversion + rng.uniform(500.0, 1900.0)
     lapse = rng.uniform(0.0, 0.3e-3) if residual else rng.uniform(2.5e-3, 6e-3)
     cap, free = rng.uniform(0.5, 5.0), rng.uniform(3e-3, 6e-3)
-    ground = rng.uniform(283.0, 297.0)
+    ground = coolest + rng.uniform(0.0, 10.0)
     at_top = ground + strength + lapse * (residual_top - inversion)
     points = (
         (0.0, ground),
@@ -72,8 +72,9 @@ def _cases() -> Iterator[Case]:
             wind = rng.uniform(0.0, 0.8) if family == "calm" else rng.uniform(3.0, 12.0)
             wet = family == "wet"
             profile = _morning(
-                rng, residual=family == "residual" or (family != "plain" and number % 2 == 1), wind=wind,
-                moist=rng.uniform(0.010, 0.015) if wet else rng.uniform(0.003, 0.008),
+                rng, residual=family == "residual" or (family != "plain" and number % 2 == 1),
+                coolest=312.0 if high else 295.0 if wet else 286.0, wind=wind,
+                moist=rng.uniform(0.010, 0.014) if wet else rng.uniform(0.002, 0.005 if high else 0.007),
                 pressure=rng.uniform(65000.0, 83000.0) if high else rng.uniform(94000.0, 101000.0),
                 elevation=2500.0 if high else 100.0,
             )  # fmt: skip
