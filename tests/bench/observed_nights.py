@@ -184,7 +184,7 @@ def scores(all_nights: list[Night], measured: list[Reading], computed: list[Read
     climate = before + mean_of_others(drop) - dawn
     lines = [score_line("dawn temperature (K)", cold - dawn, [("rank corr. of the drop", rank_correlation(cold - before, drop))]),
              score_line("   climatological drop of the other nights", climate, []),
-             f"   the model's error is {1.0 - mae(cold - dawn) / mae(climate):+.0%} below it"]  # fmt: skip
+             f"   model's error against climatology's: {mae(cold - dawn) / mae(climate) - 1.0:+.0%}"]  # fmt: skip
     for rule in ("rising", "tables"):
         for what, unit, baseline in (("strength", "K", mean_of_others), ("top", "m", median_of_others)):
             a = np.array([getattr(getattr(one, rule), what) for one in measured])
@@ -205,12 +205,16 @@ def main() -> int:
     """Print the tables."""
     parser = argparse.ArgumentParser(description=__doc__)
     parser.add_argument("--set", default=SET, choices=(SET, "vienna_2015"), help="folder of observed nights")
-    name = parser.parse_args().set
+    parser.add_argument("--cover", help="land cover in place of the fixed one, to see what it decides")
+    told = parser.parse_args()
+    name = told.set
     folder = observed_folder() / name
     if not folder.is_dir():
         print(f"observed nights are not at {folder}; set DAYLAYER_OBSERVED", file=sys.stderr)
         return 1
     given, all_nights = constants(), nights(folder)
+    if told.cover:
+        given["surface"]["cover"] = told.cover
     cases = [scenario_of(night, given) for night in all_nights]
     computed = [read_run(run(case), night) for case, night in zip(cases, all_nights, strict=True)]
     measured = [read(night.dawn.height, night.dawn.temperature, night.surface) for night in all_nights]
