@@ -12,6 +12,7 @@ from numpy.typing import NDArray
 
 from forcing.assumptions import wind_near
 from forcing.cover import anthropogenic_course
+from forcing.free_air import FreeAir
 from forcing.scenario_types import Scenario
 from forcing.sky import clear_sky_shortwave, cloud_factor, precipitable_water
 from forcing.sun import solar_position
@@ -21,8 +22,8 @@ Array = NDArray[np.float64]
 # columns of the forcing table, SI; a measured input that is missing at a knot is NaN
 SHORTWAVE, LONGWAVE, NET_RADIATION, WIND_10M, GEOSTROPHIC_U, GEOSTROPHIC_V = 0, 1, 2, 3, 4, 5
 DIVERGENCE, HEATING, MOISTENING, ANTHROPOGENIC, SENSIBLE, LATENT, FRICTION = 6, 7, 8, 9, 10, 11, 12
-CLOUD, CLOUD_BASE, LATER_WEIGHT = 13, 14, 15
-COLUMNS = 16
+CLOUD, CLOUD_BASE, LATER_WEIGHT, RADIATIVE = 13, 14, 15, 16
+COLUMNS = 17
 
 
 
@@ -100,10 +101,11 @@ def later_weight(scenario: Scenario, time: Array) -> Array:
     return np.clip((time - first) / (scenario.later.valid.timestamp() - first), 0.0, 1.0)
 
 
-def tabulate(scenario: Scenario, time: Array, radiative_heating: float) -> Knots:
+def tabulate(scenario: Scenario, time: Array, free: FreeAir) -> Knots:
     """Sample everything that acts on the air at the knots.
 
-    ``radiative_heating`` [K s-1] of the free air (negative cools) is added to the heat advection.
+    Where no divergence is given the air sinks as its own long-wave cooling asks for. A later profile already holds what
+    advection, sinking and radiation did to the air aloft until then, so none of them acts beside it.
     """
     weather, fluxes = scenario.weather, scenario.fluxes
     table = np.zeros((len(time), COLUMNS))
@@ -112,9 +114,13 @@ def tabulate(scenario: Scenario, time: Array, radiative_heating: float) -> Knots
     table[:, NET_RADIATION] = weather.sample("net_radiation_W_m2", time)
     table[:, WIND_10M] = weather.sample("wind_10m_m_s", time)
     table[:, GEOSTROPHIC_U], table[:, GEOSTROPHIC_V] = pressure_gradient_wind(scenario, time)
+    alone = np.ones(time.shape) if scenario.later is None else np.where(time < scenario.later.valid.timestamp(), 0.0, 1.0)
     table[:, DIVERGENCE] = weather.sample("divergence_per_s", time)
-    table[:, HEATING] = weather.sample("heat_advection_K_h", time) + radiative_heating
-    table[:, MOISTENING] = weather.sample("moisture_advection_g_kg_h", time)
+    if not weather.given("divergence_per_s"):
+        table[:, DIVERGENCE] = 0.0 if scenario.later is not None else free.divergence
+    table[:, HEATING] = alone * weather.sample("heat_advection_K_h", time)
+    table[:, RADIATIVE] = alone * free.heating
+    table[:, MOISTENING] = alone * weather.sample("moisture_advection_g_kg_h", time)
     table[:, ANTHROPOGENIC] = anthropogenic_heat(scenario, time)
     table[:, CLOUD] = weather.sample("cloud_fraction", time)
     table[:, CLOUD_BASE] = weather.sample("cloud_base_m", time)

@@ -9,9 +9,10 @@ from typing import NamedTuple
 import numpy as np
 from numpy.typing import NDArray
 
-from forcing.air import GRAVITY, KAPPA, P_REFERENCE, coriolis, each, temperature
+from forcing.air import GRAVITY, KAPPA, P_REFERENCE, coriolis
 from forcing.cover import ground as ground_of
 from forcing.errors import ModelError, ScenarioError
+from forcing.free_air import FreeAir, free_air
 from forcing.longwave_column import Anchor
 from forcing.scenario_types import Scenario
 from forcing.surface import Ground, soil_layers
@@ -31,10 +32,10 @@ from slab.daytime import EAST, HEAT, MASS, MEMBERS, NORTH, SOIL, SOIL_LAYERS, SU
 from slab.growth import CLOSURES, Closure
 from slab.handover import RESIDUAL, Handover, column_after_slab
 from slab.march import EVENING, FAILED, RAN_TO_END, REACHED_TOP, STANDARD, Control, march, scratch
-from slab.nightfall import MORNING, NightCourse, through_night
-from slab.radiation import NightSky, anchored, free_air_heating, sky_column
+from slab.nightfall import MORNING, MORNING_DEPTH, NightCourse, through_night
+from slab.radiation import NightSky, anchored, sky_column
 from slab.record import FIELDS, INDEX, NAMES, SUMS
-from slab.start import GroundStart, first_mass, ground_start, yesterday
+from slab.start import GroundStart, ground_start, mixed_mass, sheared_mass, yesterday
 
 Array = NDArray[np.float64]
 
@@ -93,7 +94,7 @@ class Run:
     ground: Ground
     soil_start: GroundStart | None
     anchor: Anchor
-    radiative_heating: float
+    free: FreeAir
     surface_pressure: float
 
 
@@ -114,7 +115,7 @@ class Known(NamedTuple):
     """What a run of the same profile has already found: it need not be found again."""
 
     anchor: Anchor
-    radiative_heating: float
+    free: FreeAir
     soil: GroundStart | None
 
 
@@ -127,10 +128,9 @@ class _Stage:
         self.ground = ground_of(scenario.cover, scenario.soil_moisture)
         time = knot_times(profile.valid.timestamp(), scenario.run.hours, control.knot)
         if known is None:
-            column = (profile.pressure, each(temperature, profile.theta, profile.pressure), profile.humidity)
-            known = Known(anchored(profile, yesterday(scenario)[1]), free_air_heating(*column), None)
-        self.anchor, self.heating = known.anchor, known.radiative_heating
-        self.knots: Knots = tabulate(scenario, time, self.heating)
+            known = Known(anchored(profile, yesterday(scenario)[1]), free_air(profile), None)
+        self.anchor, self.free = known.anchor, known.free
+        self.knots: Knots = tabulate(scenario, time, self.free)
         if scenario.later is not None and np.any(self.knots.table[:, DIVERGENCE] != 0.0):
             raise ScenarioError(
                 "both a later profile and a divergence are given",
@@ -179,7 +179,7 @@ def _by_day(stage: _Stage, first: int, start: Handover, patience: int) -> tuple[
     later, weight = stage.later_on(air, first)
     for row, value in zip(stage.rows, weight, strict=True):
         row[LATER_WEIGHT] = float(value)
-    mass = first_mass(air)
+    mass = sheared_mass(air) if first == 0 else mixed_mass(air)
     state = as_numbers(np.zeros(MEMBERS))
     state[MASS], state[HEAT], state[VAPOUR] = mass, start.heat, start.vapour
     inside = np.asarray(air.mass) <= mass
@@ -218,15 +218,21 @@ def _by_night(stage: _Stage, first: int, start: Handover) -> tuple[Part, int, Ha
     table[:, LATER_WEIGHT] = weight
     sky = NightSky(*stage.column_now(start.air), stage.anchor, given=stage.knots.longwave_given)
     course = through_night(
-        first, len(stage.times) - 1, stage.knots.time, table, start, stage.ground, stage.place, sky, stage.heating,
-        later, stage.heights, stage.record,
+        first, len(stage.times) - 1, stage.knots.time, table, start, stage.ground, stage.place, sky, later,
+        stage.heights, stage.record,
     )  # fmt: skip
     return Part(NIGHT, first, course.reached, start.air, later, course), course.reason, course.handover
 
 
-def _starts_by_night(stage: _Stage) -> bool:
-    """Whether the surface takes heat from the air at the start: by the given fluxes, or a sun too low to feed it."""
+def _starts_by_night(stage: _Stage, air: Aloft) -> bool:
+    """Whether the run starts with the resolved column.
+
+    It does where the surface takes heat from the air (by the given fluxes, or with a sun too low to feed it), and where
+    the lowest air is still stratified: convection has to grow through that first.
+    """
     row = stage.knots.table[0]
+    if float(np.interp(mixed_mass(air), np.asarray(air.mass), np.asarray(air.height))) < MORNING_DEPTH:
+        return True
     if stage.knots.fluxes_given:
         return bool(row[SENSIBLE] + 0.07 * row[LATENT] <= 0.0)
     if stage.knots.net_radiation_given:
@@ -265,7 +271,7 @@ def run(scenario: Scenario, *, control: Control = STANDARD, heights: tuple[float
     skin = soil.skin if soil is not None else float(scenario.profile.temperature[0])
     handover = Handover(from_profile(scenario.profile), 0.0, 0.0, layers, skin, math.nan, (0.0,) * SUMS)
     parts: list[Part] = []
-    night = not by_day and _starts_by_night(stage)
+    night = not by_day and _starts_by_night(stage, handover.air)
     last = len(stage.times) - 1
     first, reason = 0, EVENING
     while first < last and reason in (EVENING, MORNING):
@@ -288,7 +294,7 @@ def _collect(stage: _Stage, parts: tuple[Part, ...], stopped: str, soil: GroundS
         scenario=stage.scenario, time=stage.knots.time, fields={n: table[:, INDEX[n]] for n in NAMES},
         heights=stage.heights, temperatures=table[:, FIELDS:], day=day, residual_top=_residual_tops(parts, table),
         parts=parts, stopped=stopped, ground=stage.ground, soil_start=soil, anchor=stage.anchor,
-        radiative_heating=stage.heating, surface_pressure=stage.place.pressure,
+        free=stage.free, surface_pressure=stage.place.pressure,
     )  # fmt: skip
 
 

@@ -36,6 +36,7 @@ from forcing.table import (
     LONGWAVE,
     MOISTENING,
     NET_RADIATION,
+    RADIATIVE,
     SENSIBLE,
     SHORTWAVE,
     WIND_10M,
@@ -121,7 +122,8 @@ def offsets_at(start: Offsets, row: Numbers, following: Numbers, span: float, ta
     half = 0.5 * f
     return Offsets(
         start.sunk + tau * (mean * row[DIVERGENCE] + half * following[DIVERGENCE]),
-        start.warmed + tau * (mean * row[HEATING] + half * following[HEATING]),
+        start.warmed
+        + tau * (mean * (row[HEATING] + row[RADIATIVE]) + half * (following[HEATING] + following[RADIATIVE])),
         start.moistened + tau * (mean * row[MOISTENING] + half * following[MOISTENING]),
         row[LATER_WEIGHT] + f * (following[LATER_WEIGHT] - row[LATER_WEIGHT]),
         (following[LATER_WEIGHT] - row[LATER_WEIGHT]) / span,

@@ -49,7 +49,7 @@ from slab.night_answers import (
     sinking_rates,
     stress_depth,
 )
-from slab.night_grid import Numbers, numbers
+from slab.night_grid import Column, Grid, Numbers, numbers
 from slab.night_step import advance
 from slab.night_surface import ENERGY, Drive, Link
 from slab.night_terms import Outside, right_side
@@ -61,6 +61,8 @@ Array = NDArray[np.float64]
 CHUNK = 300.0  # [s] long-wave and forcing are held this long (NIGHT column: half of it changes a night by under 0.02 K)
 COLUMN_TOP = 2000.0  # [m]
 MAST = 10.0  # [m]
+MORNING_DEPTH = 100.0  # [m] convective depth from which the slab takes over (Angevine et al. 2001 end the transition at 200 m)
+MORNING_LASTS = 4.0 * 3600.0  # [s]
 FADES = 100.0  # [m] a wind measured at the mast acts up to here. Chosen on two sets (tests/bench/mesonet_night, cases99): with
 # 40 m the column keeps 0.65 m/s of error at the mast on one and 10 W m-2 of heat flux on the other, with 100 m 0.33 and 2,
 # and 200 m takes the wind from above calm nights
@@ -134,6 +136,15 @@ def _below(top: float, height: float, roughness: float) -> float:
     return math.log((height + roughness) / roughness) / math.log((top + roughness) / roughness)
 
 
+def mixed_depth(grid: Grid, state: Column) -> float:
+    """Depth [m] that convection from the ground has mixed: where virtual theta first passes its mean below."""
+    virtual = np.asarray(state.theta) * (1.0 + VIRTUAL * np.asarray(state.humidity))
+    mass = np.asarray(grid.mass)
+    below = np.cumsum(mass * virtual) / np.cumsum(mass)
+    over = np.flatnonzero(virtual[1:] >= below[:-1])
+    return float(grid.height[int(over[0]) + 1] if over.size else grid.height[-1])
+
+
 def edges_of(setup: Setup) -> Array:
     """Heights of the cell edges [m], shape (n + 1,)."""
     grid = setup.grid
@@ -152,15 +163,15 @@ def _toward_measured(setup: Setup, measured: float) -> Array:
     return share * (min(max(measured / max(wind, 0.2), 0.2), 5.0) - 1.0) / RELAXATION
 
 
-def _outside(setup: Setup, place: Place, values: Array, uniform: float, heating: Numbers,
+def _outside(setup: Setup, place: Place, values: Array, heating: Numbers,
              later_change: tuple[Array, ...], later_rate: float, beyond: Sequence[float]) -> Outside:  # fmt: skip
-    """What acts on the cells: their own long-wave in place of the free air's ``uniform`` one, advection, sinking, a
+    """What acts on the cells: their own long-wave in place of the free air's, advection, sinking, a
     later profile, the pressure gradient, a measured wind. ``beyond`` is the air one cell above the top."""
     state = setup.state
     n, coriolis = len(state.theta), place.coriolis
     scaling = _toward_measured(setup, float(values[WIND_10M])) if place.wind_given > 0.0 else np.zeros(n)
     rates = [
-        np.full(n, values[HEATING] - uniform) + np.asarray(heating), np.full(n, values[MOISTENING]),
+        np.full(n, values[HEATING]) + np.asarray(heating), np.full(n, values[MOISTENING]),
         -coriolis * values[GEOSTROPHIC_V] + scaling * np.asarray(state.u),
         coriolis * values[GEOSTROPHIC_U] + scaling * np.asarray(state.v),
     ]  # fmt: skip
@@ -234,12 +245,12 @@ def _note(setup: Setup, ground: Ground, drive: Drive, link: Link) -> NightNote:
 
 
 def through_night(first: int, last: int, times: Array, table: Array, start: Handover, ground: Ground, place: Place,
-                  sky: NightSky, uniform: float, later: Aloft | None, heights: Sequence[float],
+                  sky: NightSky, later: Aloft | None, heights: Sequence[float],
                   record: Sequence[list[float]], closure: str = "blend") -> NightCourse:  # fmt: skip
     """Carry the column from knot ``first`` until the surface feeds it from below again, or to knot ``last``.
 
-    It ends at the second knot in a row with an upward virtual flux. ``uniform`` [K s-1] is the long-wave heating that
-    the forcing table holds for the free air; the cells have their own.
+    It ends where the virtual flux has been upward for two knots and convection has mixed the lowest `MORNING_DEPTH`, so
+    that the slab never takes over air that is still stratified; at the latest after `MORNING_LASTS`.
 
     Raises
     ------
@@ -271,7 +282,7 @@ def through_night(first: int, last: int, times: Array, table: Array, start: Hand
             if sky.given:
                 down = float(values[LONGWAVE])
             later_rate = float(table[min(k + 1, last), LATER_WEIGHT] - table[k, LATER_WEIGHT]) / span
-            outside = _outside(setup, place, values, uniform, heating, change, later_rate, beyond)
+            outside = _outside(setup, place, values, heating, change, later_rate, beyond)
             drive = _drive(setup, ground, place, values, down)
             if piece == 0:
                 link = right_side(setup.method, grid, setup.foot, setup.soil, drive, outside, state, setup.work.rates,
@@ -283,7 +294,8 @@ def through_night(first: int, last: int, times: Array, table: Array, start: Hand
                     _write(record[k], setup, ground, drive, table[k], link, at, totals, gained, heights)
                 notes[k] = _note(setup, ground, drive, link)
                 upward = upward + 1 if record[k][INDEX["buoyancy_flux"]] > 0.0 else 0
-                if k == last or upward >= 2:
+                ready = upward >= 2 and mixed_depth(grid, state) >= MORNING_DEPTH
+                if k == last or ready or upward * span >= MORNING_LASTS:
                     reason = RAN_TO_END if k == last else MORNING
                     return _finish(k, reason, setup, start, later, at, notes, totals, gained)
             length = span / pieces

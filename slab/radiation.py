@@ -156,30 +156,3 @@ class NightSky:
             base = state.theta[min(level, cells - 1)] * self._exner[min(level, cells - 1)]
             down = formula_downwelling(vapour, state.theta[0] * foot.exner, cloud, base, self._held.offset)
         return down, self._rate
-
-
-def free_air_heating(pressure: Array, temperature: Array, humidity: Array) -> float:
-    """Mean long-wave heating of potential temperature [K s-1] between 1 and 4 km above ground (negative cools).
-
-    It acts on the slab and the air aloft alike, as the day's budgets ask of any heating that is the same at all heights.
-    """
-    levels = radiation_levels(pressure, temperature, humidity, count=25)
-    p = np.asarray(levels.pressure)
-    t = 0.5 * (np.asarray(levels.temperature)[1:] + np.asarray(levels.temperature)[:-1])
-    q = 0.5 * (np.asarray(levels.humidity)[1:] + np.asarray(levels.humidity)[:-1])
-    n = len(t)
-    empty: list[float] = []
-    water, carbon, emission = (numbers(np.zeros(n + 1)) for _ in range(3))
-    matrix, down, up = numbers(np.zeros((n + 1) * (n + 1))), numbers(np.zeros(n + 1)), numbers(np.zeros(n + 1))
-    column_paths(levels.pressure, as_numbers(t), as_numbers(q), as_numbers(np.array(empty)), as_numbers(np.array(empty)),
-                 water, carbon)  # fmt: skip
-    column_emission(levels.pressure, as_numbers(t), as_numbers(np.array(empty)), emission)
-    transmissivities(water, carbon, n + 1, TABLE, matrix)
-    fluxes(matrix, emission, 0.0, float(temperature[0]), 1.0, 0.0, n + 1, 0.0, down, up)
-    height = -29.27 * 265.0 * np.log(p / p[0])
-    low, high = (int(np.searchsorted(height, z)) for z in (1000.0, 4000.0))
-    gained = (down[high] - up[high]) - (down[low] - up[low])
-    middle = 0.5 * (p[low] + p[high])
-    rate = gained * GRAVITY / (1005.0 * (p[low] - p[high]))
-    return float(rate / (middle / P_REFERENCE) ** KAPPA)
-

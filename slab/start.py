@@ -56,8 +56,13 @@ def turbulent_depth(height: Array, theta_v: Array, speed: Array) -> float:
     return min(max(depth, SHALLOWEST), DEEPEST)
 
 
-def first_mass(air: Aloft) -> float:
-    """Mass [kg m-2] of the first slab: the turbulent layer, or deeper where mixing it would leave it unstable."""
+def mixed_mass(air: Aloft) -> float:
+    """Mass [kg m-2] of the layer that convection has mixed: mixing it further would leave it stable at its top."""
+    return encroached_mass(air, 0.0, 0.0, 0.0, mass_of(air, SHALLOWEST))
+
+
+def sheared_mass(air: Aloft) -> float:
+    """Mass [kg m-2] of a first slab that shear keeps turbulent, or deeper where mixing it would leave it unstable."""
     height, theta = np.asarray(air.height), np.asarray(air.theta)
     theta_v = theta * (1.0 + VIRTUAL * np.asarray(air.humidity))
     depth = turbulent_depth(height, theta_v, np.hypot(np.asarray(air.u), np.asarray(air.v)))

@@ -71,7 +71,7 @@ def _uniform(done: Run, begin: int, first: int, last: int) -> tuple[float, float
     hours = (done.time[last] - done.time[first]) / 3600.0
     weather = done.scenario.weather
     middle = np.array([0.5 * (done.time[first] + done.time[last])])
-    heat = float(weather.sample("heat_advection_K_h", middle)[0]) + done.radiative_heating
+    heat = float(weather.sample("heat_advection_K_h", middle)[0]) + done.free.heating
     return 3600.0 * hours * heat, 3600.0 * hours * float(weather.sample("moisture_advection_g_kg_h", middle)[0])
 
 

@@ -70,7 +70,7 @@ def run_pair(name: str, scenario: Scenario, changes: Sequence[Change], threshold
     """
     check_ground(scenario)
     base = run(scenario)
-    known = Known(base.anchor, base.radiative_heating, None)  # of the profile alone, so the same for every ground
+    known = Known(base.anchor, base.free, None)  # of the profile alone, so the same for every ground
     found = []
     for change in changes:
         changed = apply(change, scenario)

@@ -37,7 +37,7 @@ def sensitivities(pair: Pair, changes: Sequence[Change], progress: Callable[[str
         ends the change of the base's answers (``base``) and the difference that every change then makes (``changes``).
     """
     scenario = pair.base.scenario
-    known = Known(pair.base.anchor, pair.base.radiative_heating, None)
+    known = Known(pair.base.anchor, pair.base.free, None)
     here = _numbers(scenario, known)
     rows = []
     for name, unit, source, ends in _variants(scenario):

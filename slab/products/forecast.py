@@ -148,7 +148,7 @@ def effects(scenario: Scenario, done: Run) -> dict[str, tuple[float | None, floa
     if day is None:
         return {}
     hours = max(1.0, (done.time[day.last] - done.time[0]) / 3600.0)
-    known = Known(done.anchor, done.radiative_heating, done.soil_start)
+    known = Known(done.anchor, done.free, done.soil_start)
 
     def extremes(changed: Scenario, key: str) -> tuple[float, float]:
         short = replace(changed, run=replace(changed.run, hours=hours))
@@ -186,7 +186,7 @@ def _assumption(one: Assumption, found: dict[str, tuple[float | None, float | No
 def _own_assumptions(done: Run) -> list[dict[str, Any]]:
     """What the run itself took for granted beyond the scenario's inputs."""
     found = [("long-wave", done.anchor.text, "no long-wave was given"),
-             ("long-wave cooling of the free air", f"{86400.0 * done.radiative_heating:.1f} K a day, the same at all heights",
+             ("long-wave cooling of the free air", f"{86400.0 * done.free.heating:.1f} K a day, the same at all heights",
               "mean of the column's own fluxes between 1 and 4 km")]  # fmt: skip
     if done.soil_start is not None:
         s = done.soil_start

@@ -179,7 +179,7 @@ def members(done: Run, rows: Array, between: tuple[float, float]) -> tuple[Membe
         Lower and upper height [m].
     """
     steps = steps_of(done.scenario)
-    known = Known(done.anchor, done.radiative_heating, done.soil_start)
+    known = Known(done.anchor, done.free, done.soil_start)
     found = [member_of(done, rows, between)]
     for signs in design(len(steps)):
         changed, taken = done.scenario, known
