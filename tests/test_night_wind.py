@@ -14,7 +14,7 @@ from forcing.profile import Profile
 from forcing.scenario import build
 from forcing.scenario_parts import Parts
 from forcing.weather import Weather
-from slab.cycle import Run, run
+from slab.cycle import NIGHT, Part, Run, run
 
 START = datetime(2026, 6, 20, 22, tzinfo=UTC)  # four hours before sunset at the site
 
@@ -45,10 +45,14 @@ def _run(aloft: float, measured: float | None) -> Run:
     return run(build(settings, folder=Path(), source="invented", parts=parts))
 
 
+def _night(done: Run) -> Part:
+    """The night that follows the day."""
+    return [part for part in done.parts if part.kind == NIGHT][-1]
+
+
 def test_friction_velocity_does_not_jump_at_the_hand_over() -> None:
     done = _run(8.0, None)
-    first = done.parts[1].first
-    assert done.parts[1].kind == "night"
+    first = _night(done).first
     friction = done.fields["friction_velocity"][first - 1 : first + 3]
     assert np.abs(np.diff(friction)).max() < 0.2 * friction[0]
     wind = done.fields["wind_10m"][first - 1 : first + 3]
@@ -57,7 +61,7 @@ def test_friction_velocity_does_not_jump_at_the_hand_over() -> None:
 
 def test_first_cells_follow_the_logarithmic_law_up_to_the_top_of_the_surface_layer() -> None:
     done = _run(8.0, None)
-    part = done.parts[1]
+    part = _night(done)
     assert part.course is not None
     note = part.course.notes[part.first]
     speed, height = np.hypot(note.u, note.v), part.course.height
@@ -72,7 +76,7 @@ def test_first_cells_follow_the_logarithmic_law_up_to_the_top_of_the_surface_lay
 @pytest.mark.parametrize("measured", [1.0, 3.0, 6.0])
 def test_column_comes_to_the_measured_wind(measured: float) -> None:
     done = _run(8.0, measured)
-    night = done.parts[1]
+    night = _night(done)
     late = slice(night.first + 6, night.last + 1)
     assert np.abs(done.fields["wind_10m"][late] - measured).mean() < 0.15 * measured + 0.3
 
