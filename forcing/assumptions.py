@@ -12,6 +12,7 @@ from typing import TYPE_CHECKING, NamedTuple
 
 import numpy as np
 
+from forcing.free_air import free_air, free_from
 from forcing.scenario_parts import DEFAULT_COVER, DEFAULT_REBASE, DEFAULT_SOIL_MOISTURE, REBASE_FROM_M, SURFACE_KEYS
 from forcing.scenario_types import Assumption, Scenario
 
@@ -70,7 +71,7 @@ _MOTION = (
         "sinking of the air",
         "none (divergence 0 per s)",
         "no divergence was given",
-        "weak sinking, divergence 1e-5 per s",
+        "stronger sinking, divergence 1e-5 per s",
         1e-5,
     ),
     _Default(
@@ -103,7 +104,7 @@ def list_assumptions(scenario: Scenario) -> tuple[Assumption, ...]:
         *_surface(scenario),
         *_weather(scenario, _SKY),
         *_winds(scenario),
-        *_weather(scenario, _MOTION if scenario.later is None else _MOTION_IN_LATER),
+        *_weather(scenario, _motion(scenario)),
         *_air_aloft(scenario),
         *_run(scenario),
     )
@@ -187,6 +188,24 @@ def _cover_name(scenario: Scenario) -> str:
     return f"{name} with {', '.join(overrides)}" if overrides else name
 
 
+def _motion(scenario: Scenario) -> tuple[_Default, ...]:
+    """Sinking and advection; sinking that is not given balances the long-wave cooling of the free air."""
+    if scenario.later is not None:
+        return _MOTION_IN_LATER
+    sinking, *rest = _MOTION
+    if scenario.weather.given(sinking.key):
+        return _MOTION
+    own = free_air(scenario.profile)
+    return (
+        sinking._replace(
+            value=f"divergence {own.divergence:.1e} per s",
+            why=f"no divergence was given; this much balances the long-wave cooling of the free air, "
+            f"{-86400.0 * own.heating:.1f} K a day",
+        ),
+        *rest,
+    )
+
+
 def _weather(scenario: Scenario, defaults: tuple[_Default, ...]) -> Iterator[Assumption]:
     weather = scenario.weather
     clear = not weather.given("cloud_fraction") or weather.constants.get("cloud_fraction") == 0.0
@@ -205,7 +224,12 @@ def _weather(scenario: Scenario, defaults: tuple[_Default, ...]) -> Iterator[Ass
 
 
 def wind_near(profile: Profile, low: float = WIND_ALOFT[0], high: float = WIND_ALOFT[1]) -> tuple[float, float]:
-    """Speed [m/s] and direction it blows from [degrees] of the mean wind vector between two heights above ground [m]."""
+    """Speed [m/s] and direction it blows from [degrees] of the mean wind vector between two heights above ground [m].
+
+    Both are raised until they lie above a mixed layer that the profile itself holds: inside one, friction slows the wind.
+    """
+    lift = max(0.0, free_from(profile) - low)
+    low, high = low + lift, high + lift
     top = float(profile.height[-1])
     heights = np.linspace(min(low, top), min(high, top), 21)
     u = float(np.mean(np.interp(heights, profile.height, profile.u)))

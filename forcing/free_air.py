@@ -7,6 +7,7 @@ undisturbed air; where a scenario gives its own divergence, that is used instead
 
 from __future__ import annotations
 
+from dataclasses import replace
 from typing import NamedTuple
 
 import numpy as np
@@ -25,6 +26,7 @@ CAP = 2000.0  # [m] sinking grows linearly up to here, then is constant (contrac
 STABLE_FROM = 2000.0  # [m] the gradient that sinking acts on is read from here to `HIGH`
 LEAST_GRADIENT = 0.002  # [K m-1] below this the balance would ask for sinking that nobody sees
 MOST = 1e-5  # [s-1]
+MIXED_EXCESS, SHALLOW, GRADIENT_OVER = 0.5, 100.0, 500.0  # [K], [m], [m]: our choice
 
 
 class FreeAir(NamedTuple):
@@ -32,6 +34,42 @@ class FreeAir(NamedTuple):
 
     heating: float
     divergence: float
+
+
+def own_layer_top(profile: Profile) -> float:
+    """Top [m above ground] of the layer that a profile's own ground has made: mixed by day, stable by night.
+
+    By day the first height over the minimum of virtual potential temperature below 4 km that exceeds it by 0.5 K; where
+    that is under 100 m, the warmest level of the lowest kilometre, which is the top of a surface inversion.
+    """
+    virtual = profile.virtual_theta
+    near = profile.height <= HIGH
+    coldest = int(np.argmin(np.where(near, virtual, np.inf)))
+    over = np.flatnonzero((virtual > virtual[coldest] + MIXED_EXCESS) & (profile.height > profile.height[coldest]))
+    top = float(profile.height[over[0]]) if over.size else float(profile.height[-1])
+    if top >= SHALLOW:
+        return top
+    low = profile.height <= 1000.0
+    return max(top, float(profile.height[int(np.argmax(np.where(low, profile.temperature, -np.inf)))]))
+
+
+def free_from(profile: Profile) -> float:
+    """Height [m above ground] from which a profile is free air, clear of its own layer and that layer's top."""
+    return 1.15 * own_layer_top(profile) + 50.0
+
+
+def without_own_layer(profile: Profile) -> Profile:
+    """A profile whose own layer is replaced by free air: theta continued downward by the gradient of the 500 m above it,
+    humidity held, wind as it is. What a layer has become by its own ground must not act on a computed layer once more."""
+    base = free_from(profile)
+    if base + GRADIENT_OVER > float(profile.height[-1]):
+        return profile
+    at, over = (float(np.interp(z, profile.height, profile.theta)) for z in (base, base + GRADIENT_OVER))
+    slope = max((over - at) / GRADIENT_OVER, LEAST_GRADIENT)
+    below = profile.height < base
+    theta = np.where(below, at + slope * (profile.height - base), profile.theta)
+    humidity = np.where(below, float(np.interp(base, profile.height, profile.humidity)), profile.humidity)
+    return replace(profile, theta=theta, humidity=humidity)
 
 
 def free_air(profile: Profile) -> FreeAir:

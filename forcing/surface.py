@@ -21,6 +21,7 @@ from forcing.transfer import (
     CALM_WIND,
     GUSTINESS,
     ROUNDS,
+    SUBLIMATION,
     Balance,
     Geometry,
     Transfer,
@@ -138,7 +139,7 @@ def _solved(
     guess_inverse_obukhov: float,
 ) -> Exchange:
     rho = density(pressure, air_temperature, humidity)
-    latent = latent_heat(air_temperature)
+    latent = SUBLIMATION if ground.snow > 0.0 else latent_heat(air_temperature)
     conductance = ground.skin_conductance * soil_half_conductance / (ground.skin_conductance + soil_half_conductance)
     balance = Balance(
         net_free + anthropogenic,

@@ -62,6 +62,7 @@ def shortwave(scenario: Scenario, time: Array) -> Array:
         aerosol_500nm=float(np.mean(weather.sample("aerosol_optical_depth", time))),
         ozone_cm=100.0 * float(np.mean(weather.sample("ozone_cm", time))),
         irradiance_factor=sun.irradiance_factor,
+        albedo=scenario.cover.albedo,
     ).total
     computed = clear * cloud_factor(weather.sample("cloud_fraction", time))
     measured = weather.sample("shortwave_down_W_m2", time)

@@ -31,7 +31,7 @@ ZETA_MAX = 5.0  # stability is held beyond; Beljaars & Holtslag 1991 were fitted
 TOLERANCE = 1e-5  # of the last Newton step; the error left is its square
 ROUNDS = 60
 STEP_MAX = 40.0  # K in one round
-SUBLIMATION = 2.834e6  # J kg-1, in the slope of saturation over ice only
+SUBLIMATION = 2.834e6  # J kg-1 (Murphy & Koop 2005 near 0 degrees C); what leaves snow leaves as vapour
 SETTLED = 2e-5  # K, last step of the skin temperature within the rounds for stability
 
 

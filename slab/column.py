@@ -20,6 +20,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from forcing.air import GRAVITY
+from forcing.free_air import without_own_layer
 from forcing.ground import pressure_by_theta
 from forcing.profile import Profile
 from forcing.speed import COMPILED, kernel
@@ -125,6 +126,18 @@ def mass_of(air: Aloft, height: float) -> float:
 
 
 @kernel
+def pressure_at(air: Aloft, surface_pressure: float, height: float) -> float:
+    """Pressure [Pa] at a height above ground [m]; over the table it goes on falling by the table's last scale height."""
+    last = len(air.height) - 1
+    if height <= air.height[last]:
+        return surface_pressure - GRAVITY * mass_of(air, height)
+    top = surface_pressure - GRAVITY * air.mass[last]
+    under = surface_pressure - GRAVITY * air.mass[last - 1]
+    scale = (air.height[last] - air.height[last - 1]) / math.log(under / top)
+    return top * math.exp(-(height - air.height[last]) / scale)
+
+
+@kernel
 def _origin(cap: float, mass: float, sunk: float) -> float:
     """Mass level where the air that is at ``mass`` after sinking ``sunk`` came from."""
     if mass > cap:
@@ -192,6 +205,27 @@ def sample(air: Aloft, level: float, sunk: float) -> Sample:
     return Sample(theta, humidity, u, v, st, sq, ct, cq)
 
 
+@kernel
+def blended(air: Aloft, later: Aloft, level: float, sunk: float, weight: float) -> Sample:
+    """The air at a mass level on its way from one table to a later one: ``weight`` 0 is the first, 1 the later."""
+    now = sample(air, level, sunk)
+    if weight == 0.0:
+        return now
+    then = sample(later, level, 0.0)
+    w = weight
+    k = 1.0 - w
+    return Sample(
+        k * now.theta + w * then.theta,
+        k * now.humidity + w * then.humidity,
+        k * now.u + w * then.u,
+        k * now.v + w * then.v,
+        k * now.sum_theta + w * then.sum_theta,
+        k * now.sum_humidity + w * then.sum_humidity,
+        k * now.sum_theta_below_cap + w * then.sum_theta_below_cap,
+        k * now.sum_humidity_below_cap + w * then.sum_humidity_below_cap,
+    )
+
+
 def origins(air: Aloft, mass: NDArray[np.float64], sunk: float) -> NDArray[np.float64]:
     """Mass levels where the air that is now at ``mass`` (n,) came from; `_origin` for arrays."""
     cap = air.cap
@@ -242,13 +276,21 @@ def tabulate(mass: NDArray[np.float64], height: NDArray[np.float64], values: Seq
     )  # fmt: skip
 
 
+def mean_below(air: Aloft, mass: float, values: Numbers) -> float:
+    """Mean over mass of one of the table's columns below a level."""
+    levels = np.asarray(air.mass)
+    m = np.append(levels[levels < mass], mass)
+    v = np.interp(m, levels, np.asarray(values))
+    return float(np.sum(np.diff(m) * 0.5 * (v[1:] + v[:-1])) / mass)
+
+
 def distinct(levels: NDArray[np.float64]) -> NDArray[np.float64]:
     """Increasing levels without those that repeat the one below to within a thousandth (m or kg m-2)."""
     return np.asarray(levels[np.concatenate(([True], np.diff(levels) > 1e-3))])
 
 
 def from_profile(profile: Profile) -> Aloft:
-    """Tabulate a measured profile up to 7 km or its own top."""
+    """Tabulate a measured profile up to 12 km or its own top."""
     top = min(float(profile.height[-1]), TABLE_TOP)
     even = np.concatenate((np.arange(0.0, min(top, COARSE_FROM), FINE_STEP), np.arange(COARSE_FROM, top, COARSE_STEP)))
     levels = np.unique(np.concatenate((even, profile.height[profile.height <= top], [top])))
@@ -265,8 +307,9 @@ def from_profile(profile: Profile) -> Aloft:
 
 
 def on_same_levels(air: Aloft, other: Profile) -> Aloft:
-    """A later profile on the mass levels of ``air``; above its own top the last value above the table is held."""
-    later = from_profile(other)
+    """A later profile on the mass levels of ``air``, without the layer that its own ground has made; above its own top
+    its last value is held."""
+    later = from_profile(without_own_layer(other))
     mass = np.asarray(air.mass)
     theta, humidity, u, v = (
         np.interp(mass, np.asarray(later.mass), np.asarray(x)) for x in (later.theta, later.humidity, later.u, later.v)

@@ -12,7 +12,7 @@ from numpy.typing import NDArray
 from forcing.air import GRAVITY, KAPPA, P_REFERENCE, coriolis
 from forcing.cover import ground as ground_of
 from forcing.errors import ModelError, ScenarioError
-from forcing.free_air import FreeAir, free_air
+from forcing.free_air import FreeAir, free_air, free_from
 from forcing.longwave_column import Anchor
 from forcing.scenario_types import Scenario
 from forcing.surface import Ground, soil_layers
@@ -27,7 +27,7 @@ from forcing.table import (
     knot_times,
     tabulate,
 )
-from slab.column import Aloft, as_numbers, from_profile, on_same_levels, origins
+from slab.column import Aloft, as_numbers, from_profile, mean_below, on_same_levels, origins
 from slab.daytime import EAST, HEAT, MASS, MEMBERS, NORTH, SOIL, SOIL_LAYERS, SURFACE_HEAT, VAPOUR, Offsets, Place
 from slab.growth import CLOSURES, Closure
 from slab.handover import RESIDUAL, Handover, column_after_slab
@@ -182,8 +182,7 @@ def _by_day(stage: _Stage, first: int, start: Handover, patience: int) -> tuple[
     mass = sheared_mass(air) if first == 0 else mixed_mass(air)
     state = as_numbers(np.zeros(MEMBERS))
     state[MASS], state[HEAT], state[VAPOUR] = mass, start.heat, start.vapour
-    inside = np.asarray(air.mass) <= mass
-    state[EAST], state[NORTH] = (float(np.mean(np.asarray(x)[inside])) for x in (air.u, air.v))
+    state[EAST], state[NORTH] = mean_below(air, mass, air.u), mean_below(air, mass, air.v)
     state[SOIL : SOIL + SOIL_LAYERS] = list(start.soil)
     state[SURFACE_HEAT:MEMBERS] = list(start.sums)
     work = scratch()
@@ -219,7 +218,7 @@ def _by_night(stage: _Stage, first: int, start: Handover) -> tuple[Part, int, Ha
     sky = NightSky(*stage.column_now(start.air), stage.anchor, given=stage.knots.longwave_given)
     course = through_night(
         first, len(stage.times) - 1, stage.knots.time, table, start, stage.ground, stage.place, sky, later,
-        stage.heights, stage.record,
+        free_from(stage.scenario.later) if stage.scenario.later is not None else 0.0, stage.heights, stage.record,
     )  # fmt: skip
     return Part(NIGHT, first, course.reached, start.air, later, course), course.reason, course.handover
 

@@ -41,8 +41,17 @@ from forcing.table import (
     SHORTWAVE,
     WIND_10M,
 )
-from slab.column import Aloft, Sample, as_numbers, height_of, sample
-from slab.growth import Closure, Slab, cumulus_fraction, encroached_mass, entrainment, slab_at, velocity_scale
+from slab.column import Aloft, Sample, as_numbers, blended, height_of, sample
+from slab.growth import (
+    Closure,
+    Slab,
+    cumulus_fraction,
+    encroached_mass,
+    entrainment,
+    humidity_spread,
+    slab_at,
+    velocity_scale,
+)
 
 # members of the state vector
 MASS, HEAT, VAPOUR, EAST, NORTH, SOIL = 0, 1, 2, 3, 4, 5
@@ -132,24 +141,9 @@ def offsets_at(start: Offsets, row: Numbers, following: Numbers, span: float, ta
 
 
 @kernel
-def air_at(air: Aloft, later: Aloft, place: Place, level: float, at: Offsets) -> Sample:
+def air_at(air: Aloft, later: Aloft, level: float, at: Offsets) -> Sample:
     """The air aloft at mass ``level`` without its uniform warming and moistening."""
-    now = sample(air, level, at.sunk)
-    if place.has_later == 0.0 or at.later == 0.0:
-        return now
-    then = sample(later, level, 0.0)
-    w = at.later
-    k = 1.0 - w
-    return Sample(
-        k * now.theta + w * then.theta,
-        k * now.humidity + w * then.humidity,
-        k * now.u + w * then.u,
-        k * now.v + w * then.v,
-        k * now.sum_theta + w * then.sum_theta,
-        k * now.sum_humidity + w * then.sum_humidity,
-        k * now.sum_theta_below_cap,
-        k * now.sum_humidity_below_cap,
-    )
+    return blended(air, later, level, at.sunk, at.later)
 
 
 @kernel
@@ -226,8 +220,8 @@ def tendencies(y: Numbers, dy: list[float], tau: float, span: float, row: Number
     at = offsets_at(start, row, following, span, tau)
     mass = y[MASS]
     if closure.encroachment > 0.0:
-        mass = encroached_mass(air, y[HEAT], y[VAPOUR], at.sunk, mass)
-    aloft = air_at(air, later, place, mass, at)
+        mass = encroached_mass(air, later, at.later, y[HEAT], y[VAPOUR], at.sunk, mass)
+    aloft = air_at(air, later, mass, at)
     slab = slab_at(mass, y[HEAT], y[VAPOUR], aloft)
     depth = height_of(air, mass)
     theta = slab.theta + at.warmed
@@ -251,13 +245,17 @@ def tendencies(y: Numbers, dy: list[float], tau: float, span: float, row: Number
         speed = entrainment(closure, virtual_flux, exchange.friction_velocity, depth, theta, slab.jump_virtual)
     cloud = 0.0
     vented = 0.0
+    carried = 0.0
     if place.cumulus > 0.0 and convective > 0.0:
         pressure = place.pressure - GRAVITY * mass
         warm = theta * (pressure / P_REFERENCE) ** KAPPA
         growing = speed if closure.encroachment == 0.0 else ENCROACHING * convective
         cloud = cumulus_fraction(humidity, warm, pressure, depth, slab.jump_humidity, growing, convective)
         vented = density * cloud * convective
-    slab_budgets(y, dy, mass, density * speed, vented, heat_flux, vapour_flux, slab, at, air, later, place, exchange)
+        carried = vented * humidity_spread(slab.jump_humidity, growing, convective)
+    slab_budgets(
+        y, dy, mass, density * speed, vented, carried, heat_flux, vapour_flux, slab, at, air, later, place, exchange
+    )
     if place.fluxes_given > 0.0 or place.kinematic > 0.0:
         for i in range(SOIL_LAYERS):
             dy[SOIL + i] = 0.0
@@ -274,17 +272,19 @@ def tendencies(y: Numbers, dy: list[float], tau: float, span: float, row: Number
 
 
 @kernel
-def slab_budgets(y: Numbers, dy: list[float], mass: float, entrained: float, vented: float, heat_flux: float,
-                 vapour_flux: float, slab: Slab, at: Offsets, air: Aloft, later: Aloft, place: Place,
+def slab_budgets(y: Numbers, dy: list[float], mass: float, entrained: float, vented: float, carried: float,
+                 heat_flux: float, vapour_flux: float, slab: Slab, at: Offsets, air: Aloft, later: Aloft, place: Place,
                  exchange: Exchange) -> None:  # fmt: skip
     """Mass and deficit rates. Sinking carries deficit away sideways below the cap; cumulus take slab air out and
-    profile air comes down in its stead; a profile that moves to a later one changes the deficit it is read against."""
+    profile air comes down in its stead, and the moistest air goes first: ``carried`` [kg m-2 s-1] is the vapour flux of
+    that excess, mass flux times the spread of humidity (Neggers, Stevens and Neelin 2006; recalled). A profile that moves
+    to a later one changes the deficit it is read against."""
     aloft = slab.air
     lid = min(mass, air.cap)
     drain_heat = at.divergence * (lid * slab.theta - aloft.sum_theta_below_cap)
     drain_vapour = at.divergence * (lid * slab.humidity - aloft.sum_humidity_below_cap)
     aloft_heat = -drain_heat + vented * slab.jump_theta
-    aloft_vapour = -drain_vapour + vented * slab.jump_humidity
+    aloft_vapour = -drain_vapour + vented * slab.jump_humidity - carried
     if place.has_later > 0.0 and at.later_rate != 0.0:
         then = sample(later, mass, 0.0)
         now = sample(air, mass, at.sunk)

@@ -13,11 +13,11 @@ from typing import NamedTuple
 
 from forcing.air import CP_DRY, GRAVITY, KAPPA, VIRTUAL, saturation_humidity
 from forcing.speed import kernel
-from slab.column import Aloft, Sample, locate, sample
+from slab.column import Aloft, Sample, blended, locate
 
 SMALLEST_JUMP = 1e-6  # [K] keeps the growth rate finite where the air aloft is neutral; the growth cap then decides
 ENTRAINMENT_ZONE = 0.25  # thickness over depth of the layer, centred on its top (common practice)
-SHEAR_IN_CAP = 5.0  # share of friction velocity cubed in the mixed-layer velocity scale (Troen and Mahrt 1986, recalled 0.6 x 8)
+SHEAR_IN_CAP = 5.0  # u*^3 beside w*^3 in the velocity scale of the growth cap (our choice, of the order of published ones)
 
 
 class Closure(NamedTuple):
@@ -90,7 +90,8 @@ def slab_at(mass: float, heat: float, vapour: float, air: Sample) -> Slab:
 
 
 @kernel
-def encroached_mass(air: Aloft, heat: float, vapour: float, sunk: float, least: float) -> float:
+def encroached_mass(air: Aloft, later: Aloft, weight: float, heat: float, vapour: float, sunk: float,
+                    least: float) -> float:  # fmt: skip
     """Mass [kg m-2] at which the slab's virtual temperature first meets the profile's, from ``least`` upward.
 
     Walks the table's levels, then narrows the one where the jump changes sign by false position with halved weights (the
@@ -99,14 +100,14 @@ def encroached_mass(air: Aloft, heat: float, vapour: float, sunk: float, least: 
     mass = air.mass
     top = mass[len(mass) - 1]
     low = least
-    below = slab_at(low, heat, vapour, sample(air, low, sunk)).jump_virtual
+    below = slab_at(low, heat, vapour, blended(air, later, low, sunk, weight)).jump_virtual
     if below >= 0.0:
         return low
     i = locate(mass, least) + 1
     high = top
     above = -1.0
     while i < len(mass):
-        above = slab_at(mass[i], heat, vapour, sample(air, mass[i], sunk)).jump_virtual
+        above = slab_at(mass[i], heat, vapour, blended(air, later, mass[i], sunk, weight)).jump_virtual
         if above >= 0.0:
             high = mass[i]
             break
@@ -120,7 +121,7 @@ def encroached_mass(air: Aloft, heat: float, vapour: float, sunk: float, least: 
         if high - low <= 1e-12 * high or above <= 1e-12:
             break
         middle = high - above * (high - low) / (above - below)
-        here = slab_at(middle, heat, vapour, sample(air, middle, sunk)).jump_virtual
+        here = slab_at(middle, heat, vapour, blended(air, later, middle, sunk, weight)).jump_virtual
         if here >= 0.0:
             high = middle
             above = here
@@ -135,13 +136,23 @@ def encroached_mass(air: Aloft, heat: float, vapour: float, sunk: float, least: 
 
 
 @kernel
+def humidity_spread(jump_humidity: float, entrainment_velocity: float, convective_velocity: float) -> float:
+    """Standard deviation of humidity [kg kg-1] at the layer's top, made by entrainment of dry air.
+
+    sigma_q^2 = jump_q^2 (w_e / w*) (h / delta) (Neggers, Stevens and Neelin 2006; recalled), with an entrainment zone
+    delta of a quarter of h.
+    """
+    share = max(entrainment_velocity, 1e-4) / convective_velocity
+    return max(abs(jump_humidity) * math.sqrt(share / ENTRAINMENT_ZONE), 1e-5)
+
+
+@kernel
 def cumulus_fraction(humidity: float, top_temperature: float, top_pressure: float, depth: float, jump_humidity: float,
                      entrainment_velocity: float, convective_velocity: float) -> float:  # fmt: skip
     """Area fraction [0..0.5] of cumulus rooted in the mixed layer, 0 below a condensation level over the entrainment zone.
 
     A Gaussian-like humidity distribution at the layer's top, fraction = 0.5 + 0.36 atan(1.55 (q - q_sat) / sigma_q)
-    (Cuijpers and Bechtold 1995; recalled), with the variance made by entrainment, sigma_q^2 = jump_q^2 (w_e / w*)
-    (h / delta) (Neggers, Stevens and Neelin 2006; recalled) and an entrainment zone delta of a quarter of h. The tail of
+    (Cuijpers and Bechtold 1995; recalled), sigma_q as in `humidity_spread`. The tail of
     that distribution never ends, but the slab's air rises no higher than the zone's top: the fraction fades out as the
     condensation level moves from the slab's top to the zone's (our choice).
     """
@@ -155,7 +166,5 @@ def cumulus_fraction(humidity: float, top_temperature: float, top_pressure: floa
     reached = (humidity - at_zone) / max(at_top - at_zone, 1e-9)
     if reached <= 0.0:
         return 0.0
-    spread = abs(jump_humidity) * 2.0 * math.sqrt(max(entrainment_velocity, 1e-4) / convective_velocity)
-    spread = max(spread, 1e-5)
-    excess = (humidity - at_top) / spread
+    excess = (humidity - at_top) / humidity_spread(jump_humidity, entrainment_velocity, convective_velocity)
     return min(1.0, reached) * min(0.5, max(0.0, 0.5 + 0.36 * math.atan(1.55 * excess)))

@@ -12,7 +12,7 @@ from forcing.air import GRAVITY, VIRTUAL
 from forcing.speed import kernel
 from forcing.surface import Ground
 from forcing.table import CLOUD, CLOUD_BASE, COLUMNS, LONGWAVE
-from slab.column import Aloft, as_numbers, height_of, mass_of, sample
+from slab.column import Aloft, as_numbers, height_of, pressure_at
 from slab.daytime import (
     HEAT,
     MASS,
@@ -21,6 +21,7 @@ from slab.daytime import (
     VAPOUR,
     Offsets,
     Place,
+    air_at,
     offsets_at,
     tendencies,
 )
@@ -75,7 +76,7 @@ def heun_step(y: list[float], tau: float, step: float, span: float, row: Numbers
                    closure, work.memory)  # fmt: skip
     for i in range(MEMBERS):
         work.ahead[i] = y[i] + step * work.rate[i]
-    settle(work.ahead, tau + step, span, row, following, start, air, closure)
+    settle(work.ahead, tau + step, span, row, following, start, air, later, closure)
     guess_mass = work.ahead[MASS]
     if not guess_mass > 0.0:
         return math.inf, math.inf
@@ -85,7 +86,7 @@ def heun_step(y: list[float], tau: float, step: float, span: float, row: Numbers
                ground, thickness, closure, work.memory)  # fmt: skip
     for i in range(MEMBERS):
         work.ahead[i] = y[i] + 0.5 * step * (work.rate[i] + work.rate_ahead[i])
-    settle(work.ahead, tau + step, span, row, following, start, air, closure)
+    settle(work.ahead, tau + step, span, row, following, start, air, later, closure)
     mass = work.ahead[MASS]
     if not mass > 0.0:
         return math.inf, math.inf
@@ -96,11 +97,11 @@ def heun_step(y: list[float], tau: float, step: float, span: float, row: Numbers
 
 @kernel
 def settle(y: list[float], tau: float, span: float, row: Numbers, following: Numbers, start: Offsets, air: Aloft,
-           closure: Closure) -> None:  # fmt: skip
+           later: Aloft, closure: Closure) -> None:  # fmt: skip
     """Under encroachment the depth follows from heat alone, but is never less than the old top carried by the air."""
     if closure.encroachment > 0.0 and y[MASS] > 0.0:
         at = offsets_at(start, row, following, span, tau)
-        y[MASS] = encroached_mass(air, y[HEAT], y[VAPOUR], at.sunk, y[MASS])
+        y[MASS] = encroached_mass(air, later, at.later, y[HEAT], y[VAPOUR], at.sunk, y[MASS])
 
 
 @kernel
@@ -160,7 +161,7 @@ def march(first: int, last: int, times: Numbers, rows: Sequence[list[float]], y:
     while True:
         following = min(k + 1, last)
         span = times[following] - times[k] if following > k else 600.0
-        radiation_step(rows[k], rows[following], y, at, air, place, work, sky)
+        radiation_step(rows[k], rows[following], y, at, air, later, place, work, sky)
         flow = tendencies(y, work.rate, 0.0, span, rows[k], rows[following], work.values, at, air, later, place,
                           ground, thickness, closure, work.memory)  # fmt: skip
         write_record(record[k], y, flow, at, place, ground, heights)
@@ -183,15 +184,19 @@ def march(first: int, last: int, times: Numbers, rows: Sequence[list[float]], y:
 
 
 @kernel
-def radiation_step(row: list[float], following: list[float], y: Numbers, at: Offsets, air: Aloft, place: Place,
-                   work: Work, sky: SkyColumn) -> None:  # fmt: skip
-    """Long-wave from the sky and the shade of cumulus, held until the next knot."""
-    aloft = sample(air, y[MASS], at.sunk)
-    slab = slab_at(y[MASS], y[HEAT], y[VAPOUR], aloft)
+def radiation_step(row: list[float], following: list[float], y: Numbers, at: Offsets, air: Aloft, later: Aloft,
+                   place: Place, work: Work, sky: SkyColumn) -> None:  # fmt: skip
+    """Long-wave from the sky and the shade of cumulus, held until the next knot.
+
+    Cumulus emit from the slab's top; other cloud from its own base where it covers more.
+    """
+    slab = slab_at(y[MASS], y[HEAT], y[VAPOUR], air_at(air, later, y[MASS], at))
     work.memory[2] = shade_of(row[CLOUD], work.memory[3]) if sky.shade > 0.0 else 0.0
     if sky.given > 0.0:
         return
-    base = place.pressure - GRAVITY * mass_of(air, row[CLOUD_BASE])
+    base = pressure_at(air, place.pressure, row[CLOUD_BASE])
+    if work.memory[3] > row[CLOUD]:
+        base = place.pressure - GRAVITY * y[MASS]
     cloud = 1.0 - (1.0 - row[CLOUD]) * (1.0 - work.memory[3])
     flux = longwave_under_slab(sky, y[MASS], slab.theta + at.warmed, slab.humidity + at.moistened, at.warmed,
                                at.moistened, cloud, base)  # fmt: skip

@@ -209,7 +209,7 @@ def link(
         net -= MELT_CONDUCTANCE * (skin - ZERO_CELSIUS)
         lost += MELT_CONDUCTANCE
     ground = foot.skin_conductance * (skin - soil)
-    lv = latent_heat(min(max(skin, COLDEST), HOTTEST))
+    lv = SUBLIMATION if foot.snow > 0.0 else latent_heat(min(max(skin, COLDEST), HOTTEST))
     if boundary == FLUX:
         return Link(
             drive.sensible / (CP_DRY * foot.exner), 0.0, 0.0, 0.0, 0.0, drive.latent / lv, 0.0, 0.0, 0.0, 0.0, 0.0,

@@ -30,7 +30,7 @@ from forcing.table import (
     SHORTWAVE,
     WIND_10M,
 )
-from slab.column import Aloft, mass_of, sample
+from slab.column import Aloft, mass_of, pressure_at, sample
 from slab.daytime import SURFACE_LAYER, Offsets, Place, offsets_at
 from slab.handover import Handover, column_after_night, moved
 from slab.march import EVENING, RAN_TO_END
@@ -245,12 +245,13 @@ def _note(setup: Setup, ground: Ground, drive: Drive, link: Link) -> NightNote:
 
 
 def through_night(first: int, last: int, times: Array, table: Array, start: Handover, ground: Ground, place: Place,
-                  sky: NightSky, later: Aloft | None, heights: Sequence[float],
+                  sky: NightSky, later: Aloft | None, later_from: float, heights: Sequence[float],
                   record: Sequence[list[float]], closure: str = "blend") -> NightCourse:  # fmt: skip
     """Carry the column from knot ``first`` until the surface feeds it from below again, or to knot ``last``.
 
     It ends where the virtual flux has been upward for two knots and convection has mixed the lowest `MORNING_DEPTH`, so
-    that the slab never takes over air that is still stratified; at the latest after `MORNING_LASTS`.
+    that the slab never takes over air that is still stratified; at the latest after `MORNING_LASTS`. Cells below
+    ``later_from`` [m], the later profile's own layer, do not move to it.
 
     Raises
     ------
@@ -264,7 +265,8 @@ def through_night(first: int, last: int, times: Array, table: Array, start: Hand
     if later is not None:
         own = moved(start.air, None, _NOTHING, centre_mass)
         other = moved(later, None, _NOTHING, centre_mass)
-        change = tuple(b - a for a, b in zip(own, other, strict=True))
+        free = np.asarray(grid.height) >= later_from
+        change = tuple(np.where(free, b - a, 0.0) for a, b in zip(own, other, strict=True))
     heat, vapour, *aloft, sensible, into = start.sums
     totals, gained = numbers([heat, vapour, 0.0, sensible, 0.0, into, 0.0, 0.0]), list(aloft)
     notes: dict[int, NightNote] = {}
@@ -277,8 +279,8 @@ def through_night(first: int, last: int, times: Array, table: Array, start: Hand
         for piece in range(pieces):
             f = (piece + 0.5) / pieces
             values = table[k] + f * (table[min(k + 1, last)] - table[k])
-            down, heating = sky.fluxes(grid, state, setup.foot, float(values[CLOUD]), float(values[CLOUD_BASE]),
-                                         span / pieces)
+            base = pressure_at(start.air, place.pressure, float(values[CLOUD_BASE]))
+            down, heating = sky.fluxes(grid, state, setup.foot, float(values[CLOUD]), base, span / pieces)
             if sky.given:
                 down = float(values[LONGWAVE])
             later_rate = float(table[min(k + 1, last), LATER_WEIGHT] - table[k, LATER_WEIGHT]) / span

@@ -122,6 +122,8 @@ class NightSky:
         self._pressure = numbers(np.array(edge))
         self._exner = numbers((np.asarray(grid.pressure) / P_REFERENCE) ** KAPPA)
         self._upper = upper_air(*self._column, column_top=float(edge[-1]))
+        above = radiation_levels(*self._column, count=len(self._upper.water) + 1, bottom=float(edge[-1])).pressure
+        self._interfaces = np.concatenate((edge, above[1:]))
         count = cells + 1 + len(self._upper.water)
         self._water, self._carbon, self._emission = (numbers(np.zeros(count)) for _ in range(3))
         self._matrix = numbers(np.zeros((cells + 1) * count))
@@ -129,7 +131,7 @@ class NightSky:
         self._rate, self._temperature = numbers(np.zeros(cells)), numbers(np.zeros(cells))
         self._ready = True
 
-    def fluxes(self, grid: Grid, state: Column, foot: Footing, cloud: float, cloud_base: float,
+    def fluxes(self, grid: Grid, state: Column, foot: Footing, cloud: float, cloud_pressure: float,
                elapsed: float) -> tuple[float, Numbers]:  # fmt: skip
         """Downward flux at the ground [W m-2] and heating of the cells' theta [K s-1], ``elapsed`` [s] after the last call."""
         if not self._ready:
@@ -144,7 +146,7 @@ class NightSky:
             transmissivities(self._water, self._carbon, cells + 1, TABLE, self._matrix)
             self._age = 0.0
         column_emission(self._pressure, self._temperature, self._upper.emission, self._emission)
-        level = int(np.searchsorted(np.asarray(grid.interface), cloud_base)) + 1
+        level = int(np.searchsorted(-self._interfaces, -cloud_pressure))
         fluxes(self._matrix, self._emission, 0.0, state.skin[0], foot.emissivity, cloud, level, self._held.offset,
                self._down, self._up)  # fmt: skip
         heating(self._pressure, self._down, self._up, self._rate)

@@ -6,7 +6,7 @@ from datetime import UTC, datetime
 
 import numpy as np
 
-from forcing.air import GRAVITY
+from forcing.air import GRAVITY, KAPPA, P_REFERENCE
 from forcing.profile import Profile
 from slab.column import Aloft
 from slab.cycle import DAY, Part, Run
@@ -58,7 +58,7 @@ def profile_at(run: Run, knot: int, *, softened: bool = True) -> Profile:
     level_mass = np.concatenate(([0.0], centre_mass, above))
     cells = (note.theta, note.humidity, note.u, note.v)
     columns = [np.concatenate((c[:1], c, a)) for c, a in zip(cells, aloft, strict=True)]
-    exner = (run.surface_pressure / 1e5) ** 0.286
+    exner = (run.surface_pressure / P_REFERENCE) ** KAPPA
     columns[0][0] = run.fields["temperature_2m"][knot] / exner
     pressure = run.surface_pressure - GRAVITY * level_mass
     return _as_profile(run, knot, levels, pressure, *columns)

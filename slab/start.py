@@ -58,7 +58,7 @@ def turbulent_depth(height: Array, theta_v: Array, speed: Array) -> float:
 
 def mixed_mass(air: Aloft) -> float:
     """Mass [kg m-2] of the layer that convection has mixed: mixing it further would leave it stable at its top."""
-    return encroached_mass(air, 0.0, 0.0, 0.0, mass_of(air, SHALLOWEST))
+    return encroached_mass(air, air, 0.0, 0.0, 0.0, 0.0, mass_of(air, SHALLOWEST))
 
 
 def sheared_mass(air: Aloft) -> float:
@@ -66,7 +66,7 @@ def sheared_mass(air: Aloft) -> float:
     height, theta = np.asarray(air.height), np.asarray(air.theta)
     theta_v = theta * (1.0 + VIRTUAL * np.asarray(air.humidity))
     depth = turbulent_depth(height, theta_v, np.hypot(np.asarray(air.u), np.asarray(air.v)))
-    return encroached_mass(air, 0.0, 0.0, 0.0, mass_of(air, depth))
+    return encroached_mass(air, air, 0.0, 0.0, 0.0, 0.0, mass_of(air, depth))
 
 
 def _solar_hour(scenario: Scenario, time: Array) -> Array:

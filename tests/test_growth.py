@@ -119,7 +119,7 @@ def test_the_encroached_mass_is_where_slab_and_profile_meet(
         column(((0.0, 290.0), (150.0, 294.0), (1400.0, 295.0), (1500.0, 299.0), (7000.0, 325.0)), humidity=0.008)
     )
     least = mass_of(air, start)
-    mass = encroached_mass(air, heat, vapour, sunk, least)
+    mass = encroached_mass(air, air, 0.0, heat, vapour, sunk, least)
     assert mass >= least
     met = slab_at(mass, heat, vapour, sample(air, mass, sunk)).jump_virtual
     if mass > least:
@@ -132,7 +132,7 @@ def test_the_encroached_mass_is_where_slab_and_profile_meet(
 
 def test_more_heat_than_the_table_holds_ends_at_its_top() -> None:
     air = linear(theta_ground=290.0, gradient=0.001, top=3000.0)
-    assert encroached_mass(air, 1e9, 0.0, 0.0, 100.0) == air.mass[-1]
+    assert encroached_mass(air, air, 0.0, 1e9, 0.0, 0.0, 100.0) == air.mass[-1]
 
 
 def test_sinking_air_carries_an_unheated_top_down_whatever_the_step() -> None:

@@ -9,8 +9,9 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
-from forcing.air import KAPPA, P_REFERENCE, ZERO_CELSIUS, condensation_level, relative_humidity
+from forcing.air import CP_DRY, GRAVITY, KAPPA, P_REFERENCE, ZERO_CELSIUS, condensation_level, relative_humidity
 from forcing.profile import Profile
+from forcing.sun import solar_position
 from slab.cycle import DAY, Part, Run
 from slab.heat import cloud_levels, heat_to_break
 from slab.inversions import Inversion, rising_inversion
@@ -23,6 +24,8 @@ FIRST_HOURS = 24.0  # extremes of "the day" are looked for in the first 24 hours
 CUMULUS_SEEN = 0.01  # [1] area fraction from which cumulus are said to have begun (our choice)
 INVERSION_HEIGHTS = (1.5, 9.0)  # [m] the two named heights of inversion onset, those of the mesonets in TRADE 2.3
 DEEP_SUBCLOUD, DRY_SPREAD = 1500.0, 15.0  # [m, K] our thresholds for the dry-outflow note; the ingredients are WRTA's
+MORNING_ENDS = 11.0  # [h] solar time
+HOLDS = 5400.0  # [s] an evening event counts once it lasts this long: cloud at noon makes no evening (our choice)
 ENTRAINMENT_ZONE = 1.125  # top of an entrainment zone a quarter of the depth thick
 
 
@@ -35,6 +38,13 @@ class Morning:
     day: Part
 
 
+def solar_hour(run: Run, knot: int) -> float:
+    """Local solar time of a knot [h]."""
+    site = run.scenario.site
+    hour_angle = solar_position(run.time[knot : knot + 1], site.latitude, site.longitude).hour_angle
+    return float(12.0 + hour_angle[0] * 12.0 / math.pi) % 24.0
+
+
 def first_day(run: Run) -> Part | None:
     """The first stretch of day that lasts at least an hour, else the first one, else None."""
     days = [part for part in run.parts if part.kind == DAY]
@@ -42,9 +52,15 @@ def first_day(run: Run) -> Part | None:
     return next(iter(long or days), None)
 
 
+def first_whole_day(run: Run) -> Part | None:
+    """The first stretch of day that begins before 11 solar time, else None: the rest of an afternoon breaks no inversion."""
+    days = [part for part in run.parts if part.kind == DAY and run.time[part.last] - run.time[part.first] >= 3600.0]
+    return next((part for part in days if solar_hour(run, part.first) < MORNING_ENDS), None)
+
+
 def morning(run: Run) -> Morning | None:
     """The inversion before the first day: of the release where the run starts with it, of the computed dawn otherwise."""
-    day = first_day(run)
+    day = first_whole_day(run)
     if day is None:
         return None
     release = run.scenario.profile
@@ -137,11 +153,11 @@ def evening(run: Run, day: Part) -> dict[str, str | None]:
     onset = math.nan
     if low >= 0 and high >= 0:
         difference = run.temperatures[:, high] - run.temperatures[:, low]
-        onset = crossing(time, difference, upward=True, after=start)
+        onset = crossing(time, difference, upward=True, after=start, holds=HOLDS)
     return {
-        "sensible_flux_reversal_time": _when(crossing(time, f["sensible"], upward=False, after=start)),
+        "sensible_flux_reversal_time": _when(crossing(time, f["sensible"], upward=False, after=start, holds=HOLDS)),
         "inversion_onset_time": _when(onset),
-        "mixing_end_time": _when(crossing(time, f["buoyancy_flux"], upward=False, after=start)),
+        "mixing_end_time": _when(crossing(time, f["buoyancy_flux"], upward=False, after=start, holds=HOLDS)),
     }
 
 
@@ -185,7 +201,7 @@ def summary(run: Run) -> dict[str, Any]:
         out |= evening(run, day)
     if warmest is not None:
         exner = (run.surface_pressure / P_REFERENCE) ** KAPPA
-        screen = (float(f["temperature_2m"][warmest]) + 2.0 * 9.76e-3) / exner
+        screen = (float(f["temperature_2m"][warmest]) + 2.0 * GRAVITY / CP_DRY) / exner
         out["superadiabatic_excess_K"] = _number(screen - float(f["theta"][warmest]), 2) if run.day[warmest] else None
         depth, note = subcloud(run, warmest) if run.day[warmest] else (math.nan, None)
         out |= {"inverted_v_depth_m": _number(depth, 1), "dry_outflow_note": note}
@@ -215,7 +231,7 @@ def wind_known(run: Run) -> bool:
 def _wind_answers(run: Run, deepest: int | None) -> dict[str, Any]:
     empty = {"gust_low_m_s": None, "gust_high_m_s": None, "transport_wind_m_s": None, "ventilation_m2_s": None,
              "ventilation_class": None}  # fmt: skip
-    day = first_day(run)
+    day = next((part for part in run.parts if deepest is not None and part.first <= deepest <= part.last), None)
     if deepest is None or day is None or not wind_known(run):
         return empty
     depth = float(run.fields["depth"][deepest])

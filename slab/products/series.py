@@ -134,13 +134,19 @@ def series(run: Run, knots: Sequence[int]) -> dict[str, list[Any]]:
     return {name: [row[name] for row in rows] for name in rows[0]} if rows else {}
 
 
-def crossing(time: Array, values: Array, *, upward: bool, after: float = -math.inf) -> float:
-    """First time a series passes zero in the asked direction, linear between knots; NaN if it never does."""
+def crossing(time: Array, values: Array, *, upward: bool, after: float = -math.inf, holds: float = 0.0) -> float:
+    """First time a series passes zero in the asked direction and stays there for ``holds`` [s], or until the series ends.
+
+    Linear between knots; NaN if it never does.
+    """
     passed: Callable[[float, float], bool] = (
         (lambda a, b: a <= 0.0 < b) if upward else (lambda a, b: a >= 0.0 > b)
     )
     for k in range(len(time) - 1):
         a, b = float(values[k]), float(values[k + 1])
         if time[k + 1] > after and math.isfinite(a) and math.isfinite(b) and passed(a, b):
+            stays = values[k + 1 :][time[k + 1 :] <= time[k + 1] + holds]
+            if np.any((stays < 0.0) if upward else (stays > 0.0)):
+                continue
             return float(time[k] + (time[k + 1] - time[k]) * a / (a - b))
     return math.nan
