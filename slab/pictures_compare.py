@@ -220,6 +220,9 @@ def _side(document: Document, units: Units, ruler: Ruler) -> Lines:
     if many and far["median"] is not None:
         said += f" ({far['low'] / 1000.0:.1f} to {far['high'] / 1000.0:.1f} km over the days)"
     said += ", better several times that: wind times turnover time of the layer at midday"
+    whole = document["patch"]["heating_length_m"]["median"]
+    if whole is not None:
+        said += f"; the whole difference needs about {whole / 1000.0:.0f} km, wind times hours of heating"
     lines += [(line, False) for line in ruler.wrap(said, width, indent="   ")]
     return lines + _scored(document, ruler, width)
 

@@ -245,9 +245,11 @@ def _patch(base: Sequence[Answered]) -> dict[str, Any]:
         "length_m": spread((one.patch for one in base), "m"),
         "turnover_s": spread((one.turnover for one in base), "m"),
         "wind_m_s": spread((one.wind for one in base), "m s-1"),
+        "heating_length_m": spread((one.heating for one in base), "m"),
         "several": list(PATCHES),
         "text": "mixed-layer wind times turnover time (depth over convective velocity), 10 to 14 h solar time, of the base case; "
-        "several such lengths are preferred; at night air travels further before it is mixed, so the length is longer",
+        "several such lengths are preferred; at night air travels further before it is mixed, so the length is longer. The whole "
+        "difference of the afternoon needs air that was over the changed ground since the morning: wind times hours of heating",
     }
 
 

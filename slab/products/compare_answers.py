@@ -95,8 +95,9 @@ HOURLY: Mapping[str, Quantity] = {
 class Answered:
     """One run's answers: numbers by name (NaN missing), hours with their UTC times, series by name, and patch lengths.
 
-    ``hours`` count whole local hours from midnight of the first local day; ``turnover`` is the midday mean of mixing
-    depth over convective velocity [s] and ``patch`` that times the layer's wind [m].
+    ``hours`` count whole local hours from midnight of the first local day; ``turnover`` is the midday median of mixing
+    depth over convective velocity [s], ``patch`` that times the layer's wind [m], and ``heating`` the wind times the hours
+    from the first upward sensible heat to the warmest hour [m].
     """
 
     numbers: dict[str, float]
@@ -105,6 +106,7 @@ class Answered:
     series: dict[str, list[float]]
     turnover: float
     patch: float
+    heating: float
     wind: float
     stopped: str
 
@@ -131,7 +133,7 @@ def answers(run: Run, threshold: float) -> Answered:
     numbers |= extremes(run) | _means(run, sun, threshold) | _balance(run, sun) | _from_rows(run, rows)
     hours, times, table = _hourly(run, rows)
     turnover, patch, wind = turnover_of(run)
-    return Answered(numbers, hours, times, table, turnover, patch, wind, run.stopped)
+    return Answered(numbers, hours, times, table, turnover, patch, wind * heated_for(run), wind, run.stopped)
 
 
 def sun_up(run: Run) -> NDArray[np.bool_]:
@@ -295,3 +297,12 @@ def turnover_of(run: Run) -> tuple[float, float, float]:
     time = f["depth"][inside] / f["convective_velocity"][inside]
     wind = np.hypot(f["east"][inside], f["north"][inside])
     return float(np.median(time)), float(np.median(time * wind)), float(np.median(wind))
+
+
+def heated_for(run: Run) -> float:
+    """Time [s] from the first upward sensible heat to the highest 2 m temperature of the first 24 h; NaN without them."""
+    f = run.fields
+    early = run.time - run.time[0] <= FIRST_HOURS * 3600.0
+    warm = _best(f["temperature_2m"], early, 1.0)
+    fed = np.flatnonzero(early & (f["sensible"] > 0.0))
+    return math.nan if warm is None or fed.size == 0 else max(0.0, float(run.time[warm] - run.time[fed[0]]))

@@ -19,6 +19,12 @@ def planning_cautions(document: Mapping[str, Any]) -> list[dict[str, str]]:
     """Cautions H1, H2 and the general ones that hold for a comparison."""
     used, patch = document["days"]["used"], document["patch"]["length_m"]["median"]
     size = "not known" if patch is None else f"{patch / 1000.0:.0f} km"
+    whole = document["patch"]["heating_length_m"]["median"]
+    reach = (
+        ""
+        if whole is None
+        else f" The afternoon difference is that of a region wider than about {whole / 1000.0:.0f} km."
+    )
     days = "one stated day" if used == 1 else f"{used} stated days"
     assumed = [item["name"] for item in document["base"]["assumed"] if item["source"] == "assumed"]
     texts = {
@@ -27,7 +33,7 @@ def planning_cautions(document: Mapping[str, Any]) -> list[dict[str, str]]:
         "H2": "Temperatures are those of a uniform area: at 2 m by similarity, of the mixed layer and of the skin, kept apart; street, "
         "indoor and comfort temperatures differ.",
         "H3": f"A one-column answer needs a changed area wider than wind times turnover time: {size} by day on these days, "
-        "better several times that. Over a smaller area the effect on air temperature is less than shown.",
+        f"better several times that.{reach} Over a smaller area the effect on air temperature is less than shown.",
         "G2": "Not valid with fronts, sea or lake breezes, thunderstorm outflow, persistent rain, deep fog or snow cover; "
         "the run does not look for signs of these.",
         "G4": f"The spread shown is over the days ({document['spread']}); it does not include errors of the ground's properties "

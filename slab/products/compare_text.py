@@ -227,9 +227,11 @@ def patch_words(document: Document, units: Units) -> str:
     shown = [number(value / scale, 0.1) for value in far]
     over_days = f" ({shown[1]} to {shown[2]} over the days)" if document["days"]["used"] > 1 else ""
     several = [number(value * far[0] / scale, 1.0) for value in patch["several"]]
+    whole = patch["heating_length_m"]["median"]
+    far_back = "" if whole is None else f"; the whole difference needs {number(whole / scale, 10.0)} {unit}"
     return (
         f"smallest area: the changed ground must be wider than {shown[0]} {unit}{over_days}, better {several[0]} to {several[1]} "
-        f"{unit} ({patch['text']})"
+        f"{unit}{far_back} ({patch['text']})"
     )
 
 

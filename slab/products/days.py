@@ -149,7 +149,7 @@ def profile_days(place: Path, settings: Settings, *, months: Sequence[int] = (),
         for release in releases:
             _sort_in(release, file, settings, months, days, morning)
     for (date, name), (_, release) in morning.items():
-        days.append((date + name, _day(f"{date} {release.station or name}".strip(), release, settings, clear_only)))
+        days.append((date + name, _day(f"{date} {name}", release, settings, clear_only)))
     return [day for _, day in sorted(days, key=lambda item: item[0])]
 
 
@@ -178,7 +178,7 @@ def _sort_in(release: Sounding, file: Path, settings: Settings, months: Sequence
             )
         )
         return
-    key, gap = (f"{solar:%Y-%m-%d}", release.station), abs(hour - BEST_HOUR)
+    key, gap = (f"{solar:%Y-%m-%d}", release.station or file.name), abs(hour - BEST_HOUR)
     if key not in morning or gap < morning[key][0]:
         morning[key] = (gap, release)
 
