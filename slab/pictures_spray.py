@@ -17,7 +17,7 @@ from matplotlib.patches import Rectangle
 from slab.pictures_spray_strip import Day, days_of, draw_strip
 from slab.pictures_spray_words import SHADES, write_below
 from slab.pictures_style import LARGE, NAME, PAGE, SMALL, Ruler, halo
-from slab.spray_words import profile_age
+from slab.spray_words import heading_words, profile_age
 from slab.wording import Clock, Units, number, units_named
 
 __all__ = ["spray_page"]
@@ -53,8 +53,8 @@ def spray_page(document: Document, *, units: str = "metric") -> Figure:
 
 def _title(figure: Figure, document: Document) -> None:
     limits = document["limits"]
-    figure.text(0.02, 0.975, "Spray calendar, plan only", fontsize=LARGE, va="top", fontweight="bold")
-    figure.text(0.30, 0.970, document["title"], fontsize=NAME, va="top")
+    figure.text(0.02, 0.975, heading_words(document), fontsize=LARGE, va="top", fontweight="bold")
+    figure.text(0.42, 0.970, document["title"], fontsize=NAME, va="top")
     whose = (
         f"your limits: {limits['authority']}, dated {limits['dated'] or 'not given'}"
         if limits["given"]

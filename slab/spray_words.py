@@ -11,6 +11,7 @@ from slab.wording import Clock, Units, number
 
 __all__ = [
     "LIMIT_NAMES",
+    "heading_words",
     "limit_sentences",
     "lines_of_inversion",
     "plan_words",
@@ -39,6 +40,12 @@ PAST = "past"
 def plan_words(plan_only: bool) -> str:
     """The mark of an hour: a plan where it is still to come."""
     return PLAN if plan_only else PAST
+
+
+def heading_words(document: Document) -> str:
+    """What the page is: a plan while any of its hours is still to come, else a look back."""
+    future = any(hour["plan_only"] for hour in document["calendar"])
+    return "Spray calendar, plan only" if future else "Spray calendar of past hours, as modelled"
 
 
 def span(clock: Clock, ends: Sequence[str] | None, *, joined: str = "to") -> str:

@@ -15,7 +15,7 @@ from typing import Any
 import numpy as np
 
 from forcing.scenario_types import Scenario
-from slab.spray_words import plan_words
+from slab.spray_words import heading_words, plan_words
 from slab.wording import Clock
 
 __all__ = ["calendar_csv", "record_csv"]
@@ -61,7 +61,7 @@ def _written(comments: list[str], rows: list[list[Any]]) -> str:
 def calendar_csv(document: Document) -> str:
     """The hours as CSV under comment lines (``#``) with the cautions; every hour to come is marked "plan only"."""
     height = document["limits"]["wind_height_m"]
-    head = [f"{document['title']}: spray calendar, plan only; boom wind at {height:g} m"]
+    head = [f"{heading_words(document)}: {document['title']}; boom wind at {height:g} m"]
     return _written([*head, *_remarks(document)], _table(document, ()))
 
 

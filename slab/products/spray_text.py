@@ -9,7 +9,7 @@ from typing import Any
 
 from slab.products.spray_table import hourly_lines
 from slab.spray_cautions import spray_cautions
-from slab.spray_words import LIMIT_NAMES, limit_sentences, plan_words, profile_age, span, statement
+from slab.spray_words import LIMIT_NAMES, heading_words, limit_sentences, plan_words, profile_age, span, statement
 from slab.wording import Clock, Units, units_named
 
 __all__ = ["spray_text"]
@@ -59,7 +59,7 @@ def _heading(document: Document, units: Units) -> list[str]:
     height = f"{units.height_value(site['elevation_m']):.0f} {units.height_unit} above sea level"
     valid = datetime.fromisoformat(profile["valid"])
     lines = [
-        f"{document['title']}: spray calendar, plan only",
+        f"{heading_words(document)}: {document['title']}",
         (
             f"site: {site['name']}, {abs(site['latitude']):.2f} {'N' if site['latitude'] >= 0 else 'S'} "
             f"{abs(site['longitude']):.2f} {'E' if site['longitude'] >= 0 else 'W'}, {height}; local time {clock.zone.key}, "
