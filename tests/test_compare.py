@@ -270,3 +270,29 @@ def test_range_of_a_mixture_and_of_a_cover_of_ones_own() -> None:
     assert "given by the user" in ranges(own)["albedo"].source
     with pytest.raises(CoverError, match=r"sum to 0\.9"):
         covers_document(["50% short grass + 40% heath"])
+
+
+def test_sensitivity_is_ranked_and_says_what_each_change_then_does(monkeypatch: pytest.MonkeyPatch) -> None:
+    from slab.products import compare_sensitivity
+
+    few = ("albedo", "emissivity", "leaf_area")
+    monkeypatch.setattr(compare_sensitivity, "ranges", lambda cover: {key: ranges(cover)[key] for key in few})
+    scenario = with_run(plain(), hours=9.0)
+    brighter = change_of("albedo +0.10")
+    found = compare([Day("day", scenario)], [brighter], sensitivity=True)["sensitivity"]
+    assert {row["property"] for row in found["rows"]} == {*few, "soil_moisture"}
+    sizes = [row["size_K"] for row in found["rows"]]
+    assert sizes == sorted(sizes, reverse=True)
+    assert found["rows"][-1]["property"] == "emissivity"
+    albedo = next(row for row in found["rows"] if row["property"] == "albedo")
+    dark, bright = albedo["ends"]
+    assert (dark["value"], bright["value"]) == (0.15, 0.25)
+    assert dark["base"]["temperature_2m_max_C"] > 0.0 > bright["base"]["temperature_2m_max_C"]
+    for row in found["rows"]:
+        for end in row["ends"]:
+            assert end["changes"]["albedo +0.10"]["temperature_2m_max_C"] < 0.0
+    # the ends of a range move the base by what a change of that size does, to the accuracy of the coarser steps
+    half = compare([Day("day", scenario)], [change_of("albedo +0.05")])["changes"][0]["answers"]
+    assert bright["base"]["temperature_2m_max_C"] == pytest.approx(
+        half["temperature_2m_max_C"]["difference"]["median"], abs=0.05
+    )
