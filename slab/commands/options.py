@@ -177,11 +177,17 @@ class Outputs:
             raise click.UsageError(f"'{target}' is named twice; every output needs its own file.")
         self._taken.add(key)
         final = Path(target).resolve()
-        if final.is_dir():
+        try:
+            is_folder, is_device = final.is_dir(), final.exists() and not final.is_file()
+        except OSError as error:  # a name that no file system takes
+            raise DaylayerError(
+                f"cannot be written: {error.strerror}", place=target, remedy="name a file you may write"
+            ) from error
+        if is_folder:
             raise DaylayerError("is a folder", place=target, remedy="name a file in it")
         if not final.parent.is_dir():
             raise DaylayerError("its folder does not exist", place=target, remedy="make the folder first")
-        if final.exists() and not final.is_file():
+        if is_device:
             return final  # a device or a pipe is written as it is: renaming over it would replace it
         draft = final.with_name(f".{final.stem}-{os.urandom(4).hex()}{final.suffix}")
         self._moves.append((draft, final))
