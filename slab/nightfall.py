@@ -55,6 +55,7 @@ from slab.night_surface import ENERGY, Drive, Link
 from slab.night_terms import Outside, right_side
 from slab.radiation import NightSky
 from slab.record import FIELDS, INDEX
+from slab.start import turbulent_depth
 
 Array = NDArray[np.float64]
 
@@ -63,6 +64,7 @@ COLUMN_TOP = 2000.0  # [m]
 MAST = 10.0  # [m]
 MORNING_DEPTH = 100.0  # [m] convective depth from which the slab takes over (Angevine et al. 2001 end the transition at 200 m)
 MORNING_LASTS = 4.0 * 3600.0  # [s]
+SETTLES = 3600.0  # [s] after a run has started with the column
 FADES = 100.0  # [m] a wind measured at the mast acts up to here. Chosen on two sets (tests/bench/mesonet_night, cases99): with
 # 40 m the column keeps 0.65 m/s of error at the mast on one and 10 W m-2 of heat flux on the other, with 100 m 0.33 and 2,
 # and 200 m takes the wind from above calm nights
@@ -198,11 +200,18 @@ def _drive(setup: Setup, ground: Ground, place: Place, values: Array, longwave: 
 
 
 def _write(record: list[float], setup: Setup, ground: Ground, drive: Drive, values: Array, link: Link, at: Offsets,
-           totals: Numbers, gained: list[float], heights: Sequence[float]) -> None:  # fmt: skip
-    """One row of the run's record from the night column; slab members hold means over the turbulent depth."""
+           totals: Numbers, gained: list[float], heights: Sequence[float], settling: bool) -> None:  # fmt: skip
+    """One row of the run's record from the night column; slab members hold means over the turbulent depth.
+
+    While the column is ``settling`` its stress is still that of a measured profile, so the depth is read from the bulk
+    Richardson number instead.
+    """
     grid, foot, state = setup.grid, setup.foot, setup.state
     rough = (ground.roughness_momentum, ground.roughness_heat)
     depth = stress_depth(grid, state, setup.work.exchange, link)
+    if settling:
+        virtual = np.asarray(state.theta) * (1.0 + VIRTUAL * np.asarray(state.humidity))
+        depth = turbulent_depth(np.asarray(grid.height), virtual, np.hypot(np.asarray(state.u), np.asarray(state.v)))
     low = read_air(grid, foot, state, link, *rough, 2.0)
     high = read_air(grid, foot, state, link, *rough, 10.0)
     inside = max(1, int(np.searchsorted(np.asarray(grid.height), depth)))
@@ -293,7 +302,8 @@ def through_night(first: int, last: int, times: Array, table: Array, start: Hand
                     for name, value in zip(("sunk", "warmed", "moistened", "later"), at[:4], strict=True):
                         record[k][INDEX[name]] = value
                 else:
-                    _write(record[k], setup, ground, drive, table[k], link, at, totals, gained, heights)
+                    settling = math.isnan(start.residual_top) and times[k] - times[first] < SETTLES
+                    _write(record[k], setup, ground, drive, table[k], link, at, totals, gained, heights, settling)
                 notes[k] = _note(setup, ground, drive, link)
                 upward = upward + 1 if record[k][INDEX["buoyancy_flux"]] > 0.0 else 0
                 ready = upward >= 2 and mixed_depth(grid, state) >= MORNING_DEPTH

@@ -8,11 +8,11 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from forcing.air import GRAVITY, KAPPA, P_REFERENCE, STEFAN_BOLTZMANN, VIRTUAL, vapour_pressure
+from forcing.air import CP_DRY, GRAVITY, KAPPA, P_REFERENCE, STEFAN_BOLTZMANN, VIRTUAL, vapour_pressure
 from forcing.emissivity import prata_emissivity
 from forcing.scenario_types import Scenario
 from forcing.sun import solar_position
-from forcing.surface import Ground, periodic_soil, soil_layers
+from forcing.surface import Ground, energy_balance, periodic_soil, screen, soil_layers
 from forcing.table import anthropogenic_heat, shortwave
 from slab.column import Aloft, as_numbers, mass_of
 from slab.growth import encroached_mass
@@ -27,18 +27,21 @@ YESTERDAY_HEIGHT = 1000.0  # [m] where the residual layer's theta is read
 DAILY_RANGE = 12.0  # [K] assumed between last night and this afternoon where the release itself is an afternoon one
 HOTTEST_SOLAR_HOUR = 15.0
 CALM_DAY = 2.0  # [m s-1] least wind of the days before
-MIXED_DEPTH, READ_HEIGHT = 500.0, 20.0  # [m] depth for their gusts, and where their air is read (assumed)
+MOST_SHIFT = 6.0  # [K]
+MIXED_DEPTH, SCREEN_HEIGHT, WIND_HEIGHT = 500.0, 2.0, 20.0  # [m] depth for their gusts, where air and wind are read (assumed)
 
 
 @dataclass(frozen=True, slots=True)
 class GroundStart:
-    """Soil layer temperatures from the top [K] (6,), skin temperature [K] and the deep temperature they rest on [K]."""
+    """Soil layer temperatures from the top [K] (6,), skin temperature [K], the deep temperature they rest on [K], the coldest
+    and warmest air they were spun up with [K], and by how much they were then shifted to meet the screen temperature [K]."""
 
     soil: tuple[float, ...]
     skin: float
     deep: float
     coldest: float
     warmest: float
+    shift: float
 
 
 def turbulent_depth(height: Array, theta_v: Array, speed: Array) -> float:
@@ -119,12 +122,46 @@ def ground_start(scenario: Scenario, ground: Ground) -> GroundStart:
         as_numbers(np.full(time.shape, max(speed, CALM_DAY))),
         as_numbers(np.full(time.shape, MIXED_DEPTH)),
         as_numbers(anthropogenic_heat(scenario, time)),
-        READ_HEIGHT,
-        READ_HEIGHT,
+        SCREEN_HEIGHT,
+        WIND_HEIGHT,
         profile.surface_pressure,
         deep,
         SOIL_STEP,
         SOIL_DAYS,
         out,
     )
-    return GroundStart(tuple(float(x) for x in out), float(skin), deep, coldest, warmest)
+    shift = screen_shift(scenario, ground, out[0], float(longwave[0]))
+    soil = tuple(float(x) + shift for x in out)
+    return GroundStart(soil, float(skin) + shift, deep, coldest, warmest, shift)
+
+
+def screen_shift(scenario: Scenario, ground: Ground, soil: float, longwave: float) -> float:
+    """Kelvin by which the ground must start warmer for the screen temperature to come out as the release measured it.
+
+    Only where the release found stable air over the lowest 20 m: similarity between the skin and the air there then gives
+    a screen temperature that the ground decides. At most `MOST_SHIFT` either way; 0 where 20 m are not stable.
+    """
+    profile = scenario.profile
+    exner = (profile.surface_pressure / P_REFERENCE) ** KAPPA
+    measured = float(profile.theta[0]) * exner
+    over = float(np.interp(WIND_HEIGHT, profile.height, profile.theta)) * exner
+    if over <= measured + GRAVITY / CP_DRY * WIND_HEIGHT:
+        return 0.0
+    humidity = float(np.interp(WIND_HEIGHT, profile.height, profile.humidity))
+    wind = float(np.interp(WIND_HEIGHT, profile.height, np.hypot(profile.u, profile.v)))
+    sun = float(shortwave(scenario, np.array([profile.valid.timestamp()]))[0])
+    half = 2.0 * ground.soil_conductivity / soil_layers(ground)[0]
+
+    def screen_at(shift: float) -> float:
+        exchange = energy_balance(
+            ground, sun, longwave, over, humidity, WIND_HEIGHT, wind, WIND_HEIGHT, SHALLOWEST, profile.surface_pressure,
+            soil + shift, half, 0.0, soil + shift, 0.0,
+        )  # fmt: skip
+        return screen(ground, exchange, over, humidity, WIND_HEIGHT, wind, WIND_HEIGHT, profile.surface_pressure,
+                      SCREEN_HEIGHT).temperature  # fmt: skip
+
+    low, high = -MOST_SHIFT, MOST_SHIFT
+    for _ in range(12):
+        middle = 0.5 * (low + high)
+        low, high = (middle, high) if screen_at(middle) < measured else (low, middle)
+    return 0.5 * (low + high)

@@ -18,7 +18,7 @@ from slab.cautions import complete
 from slab.cycle import Known, Run, run
 from slab.march import Control
 from slab.products.events import definitions_at, first_day, summary, wind_known
-from slab.products.series import DECAYING, SLAB_TOP, STRESS, iso, output_knots, series
+from slab.products.series import DECAYING, RICHARDSON, SLAB_TOP, STRESS, iso, output_knots, series
 from slab.products.sounding import wind
 from slab.rendered import profile_at
 
@@ -33,6 +33,7 @@ HELD_HOURS = 24.0
 DEFINITIONS = {
     SLAB_TOP: "height of the density jump at the top of the mixed slab",
     STRESS: "height where the stress falls to 5 % of its surface value, divided by 0.95",
+    RICHARDSON: "lowest bulk Richardson number over 0.25, in the first hour, while the column settles",
     "mixed": "the surface feeds the layer from below",
     DECAYING: "the slab is still mixed but the surface has begun to take heat from it",
     "gust range": "from the layer's mean wind to the strongest wind up to the top of the entrainment zone, winds aloft as held",

@@ -18,18 +18,21 @@ from forcing.air import (
     dew_point,
     mixing_ratio_from_humidity,
     relative_humidity,
+    saturation_vapour_pressure,
     vapour_pressure,
 )
 from forcing.profile import Profile
 from slab.cycle import Run
 from slab.inversions import rising_inversion
 from slab.night_answers import REGIMES
+from slab.nightfall import SETTLES
 from slab.rendered import part_at, profile_at
 
 Array = NDArray[np.float64]
 
 SLAB_TOP = "slab top"
 STRESS = "stress at 5 % of the surface value"
+RICHARDSON = "bulk richardson 0.25"
 MIXED, DECAYING = "mixed", "decaying"
 
 
@@ -71,6 +74,11 @@ def regime_word(run: Run, knot: int) -> str:
     return REGIMES[course.notes[knot].regime]
 
 
+def settling(run: Run, knot: int) -> bool:
+    """Whether a knot lies in the first hour of a run that starts with the night's column."""
+    return run.parts[0].course is not None and run.time[knot] - run.time[0] < SETTLES
+
+
 def screen_profile(run: Run, knot: int, profile: Profile) -> tuple[Array, Array]:
     """Heights [m] and temperatures [K] from the lowest kept height up: the heights of the run, then the column."""
     heights = np.asarray(run.heights)
@@ -88,7 +96,7 @@ def _row(run: Run, knot: int) -> dict[str, Any]:
     f = {name: float(values[knot]) for name, values in run.fields.items()}
     profile = profile_at(run, knot)
     pressure = run.surface_pressure
-    vapour = vapour_pressure(f["humidity_2m"], pressure)
+    vapour = min(vapour_pressure(f["humidity_2m"], pressure), saturation_vapour_pressure(f["temperature_2m"]))
     base = condensation_level(f["theta"] * (pressure / P_REFERENCE) ** KAPPA, f["humidity"], pressure)
     wind, from_deg = transport_wind(profile, max(f["depth"], 10.0))
     known = run.scenario.profile.wind_known or run.scenario.weather.given("pressure_gradient_wind_m_s")
@@ -98,7 +106,7 @@ def _row(run: Run, knot: int) -> dict[str, Any]:
         "time": iso(run.time[knot]),
         "regime": regime_word(run, knot),
         "mixing_depth_m": _rounded(f["depth"], 1),
-        "depth_method": SLAB_TOP if run.day[knot] else STRESS,
+        "depth_method": SLAB_TOP if run.day[knot] else RICHARDSON if settling(run, knot) else STRESS,
         "residual_top_m": _rounded(float(run.residual_top[knot]), 1),
         "theta_K": _rounded(f["theta"], 3),
         "mixing_ratio_g_kg": _rounded(ratio, 4),
