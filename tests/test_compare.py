@@ -9,6 +9,7 @@ import math
 import re
 import subprocess
 import sys
+from dataclasses import replace
 from functools import cache
 from pathlib import Path
 from typing import Any
@@ -18,6 +19,7 @@ import pytest
 from scipy.io import netcdf_file
 
 from forcing.errors import CoverError, ScenarioError
+from forcing.own_covers import resolve
 from forcing.scenario import bundled, load, with_run, with_setting
 from forcing.scenario_types import Scenario
 from slab.cycle import run
@@ -30,6 +32,7 @@ from slab.products.compare_answers import QUANTITIES
 from slab.products.compare_files import compare_csv, compare_netcdf
 from slab.products.compare_spread import MANY, spread
 from slab.products.compare_text import compare_text
+from slab.products.compare_tiles import march, tile_check
 from slab.products.covers import covers_csv, covers_document, covers_text, ranges
 from slab.products.days import Day
 from slab.products.events import summary
@@ -311,3 +314,25 @@ def test_sensitivity_is_ranked_and_says_what_each_change_then_does(monkeypatch: 
     assert bright["base"]["temperature_2m_max_C"] == pytest.approx(
         half["temperature_2m_max_C"]["difference"]["median"], abs=0.05
     )
+
+
+def test_energy_closes_in_every_tile_and_one_cover_is_its_own_tile() -> None:
+    mixed = resolve("50% short grass + 50% paved ground", {})
+    done = run(replace(with_run(plain(), hours=9.0), cover=mixed))
+    knots = range(done.parts[-1].first, len(done.time) - 1)
+    for _, part in mixed.parts:
+        fluxes, people = march(done, part, knots)
+        gained = fluxes[:, 0] + people
+        assert np.allclose(gained, fluxes[:, 1] + fluxes[:, 2] + fluxes[:, 3], rtol=0.0, atol=1e-6)
+    found = tile_check(done)
+    assert found is not None
+    sealed, grass = (next(p for p in found["parts"] if p["cover"] == name) for name in ("paved ground", "short grass"))
+    assert sealed["latent_W_m2"] < 0.1 * grass["latent_W_m2"]
+    assert sealed["ground_W_m2"] > grass["ground_W_m2"]
+    # one cover: no tiles, and its own march repeats the run's fluxes but for the soil's coarser steps
+    alone = run(with_run(plain(), hours=9.0))
+    assert tile_check(alone) is None
+    knots = range(alone.parts[-1].first, len(alone.time) - 1)
+    fluxes, _ = march(alone, alone.scenario.cover, knots)
+    for column, name in enumerate(("net_radiation", "sensible", "latent", "ground")):
+        assert np.mean(np.abs(fluxes[:, column] - alone.fields[name][knots.start : -1])) < 6.0, name

@@ -25,6 +25,7 @@ from slab.products.compare_spread import (
     hourly_table,
     spread,
 )
+from slab.products.compare_tiles import tile_check
 from slab.products.covers import cover_record
 from slab.products.days import Day, left_out
 from slab.products.forecast import SCHEMA, doubts
@@ -42,6 +43,7 @@ class Pair:
     base: Run
     answered: Answered
     changed: tuple[tuple[Changed, Answered], ...]
+    tiles: tuple[dict[str, Any] | None, ...]
 
 
 def check_ground(scenario: Scenario) -> None:
@@ -71,11 +73,13 @@ def run_pair(name: str, scenario: Scenario, changes: Sequence[Change], threshold
     check_ground(scenario)
     base = run(scenario)
     known = Known(base.anchor, base.free, None)  # of the profile alone, so the same for every ground
-    found = []
+    found, tiles = [], []
     for change in changes:
         changed = apply(change, scenario)
-        found.append((changed, answers(run(changed.scenario, known=known), threshold)))
-    return Pair(name, base, answers(base, threshold), tuple(found))
+        done = run(changed.scenario, known=known)
+        found.append((changed, answers(done, threshold)))
+        tiles.append(tile_check(done))
+    return Pair(name, base, answers(base, threshold), tuple(found), tuple(tiles))
 
 
 def run_days(days: Sequence[Day], changes: Sequence[Change], threshold: float,
@@ -224,6 +228,7 @@ def _change(number: int, change: Change, pairs: Sequence[Pair], base: Sequence[A
         "text": change.text,
         "steps": list(made.words),
         "ground": cover_record(made.scenario.cover) | {"soil_moisture": made.scenario.soil_moisture},
+        "tiles": pairs[0].tiles[number],
         "area_fraction": made.area_fraction,
         "albedo_step": None if made.albedo_step is None else round(made.albedo_step, 6),
         "answers": table,

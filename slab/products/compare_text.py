@@ -150,6 +150,13 @@ def _change(document: Document, change: Document, units: Units) -> Iterator[str]
             for side in ("base", "changed")
         ]
         yield f"  {words:<{wide}}  {cells[0]:>16}  {cells[1]:>16}  {cells[2]:>12}  {cells[3]:>14}"
+    if change["tiles"] is not None:
+        gap = change["tiles"]["side_by_side_minus_blend"]
+        yield from _wrapped(
+            f"its parts side by side under the same air, against the blend, by day: sensible heat {gap['sensible_W_m2']:+.0f}, "
+            f"latent heat {gap['latent_W_m2']:+.0f}, net radiation {gap['net_radiation_W_m2']:+.0f} W/m²",
+            "  ",
+        )
     for one in change["effectiveness"]:
         yield from _wrapped(_effect(one, units, document), "  ")
 
