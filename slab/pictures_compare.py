@@ -215,16 +215,23 @@ def _side(document: Document, units: Units, ruler: Ruler) -> Lines:
     if len(document["changes"]) > 4:
         lines.append((f"and {len(document['changes']) - 4} more in the text output", False))
     lines.append(("smallest area", True))
-    far = document["patch"]["length_m"]
-    said = "not known" if far["median"] is None else f"wider than {far['median'] / 1000.0:.1f} km"
-    if many and far["median"] is not None:
-        said += f" ({far['low'] / 1000.0:.1f} to {far['high'] / 1000.0:.1f} km over the days)"
-    said += ", better several times that: wind times turnover time of the layer at midday"
-    whole = document["patch"]["heating_length_m"]["median"]
-    if whole is not None:
-        said += f"; the whole difference needs about {whole / 1000.0:.0f} km, wind times hours of heating"
-    lines += [(line, False) for line in ruler.wrap(said, width, indent="   ")]
+    lines += [(line, False) for line in ruler.wrap(_area(document, units), width, indent="   ")]
     return lines + _scored(document, ruler, width)
+
+
+def _area(document: Document, units: Units) -> str:
+    """The least width of changed ground, and the width that shows the whole difference."""
+    far, whole = (document["patch"][key] for key in ("length_m", "heating_length_m"))
+    if far["median"] is None:
+        return "not known: the layer was not convective at midday"
+    unit, scale = ("km", 1000.0) if units.name == "metric" else ("miles", 1609.344)
+    said = f"wider than {far['median'] / scale:.1f} {unit}"
+    if document["days"]["used"] > 1:
+        said += f" ({far['low'] / scale:.1f} to {far['high'] / scale:.1f} {unit} over the days)"
+    said += ", better several times that: wind times turnover time of the layer at midday"
+    if whole["median"] is not None:
+        said += f"; the whole difference needs about {whole['median'] / scale:.0f} {unit}, wind times hours of heating"
+    return said
 
 
 def _scored(document: Document, ruler: Ruler, width: float) -> Lines:
