@@ -15,8 +15,14 @@ FEW = 5  # assumed inputs that are named in a caution; more are counted
 
 
 def complete(document: Document, units: Units = METRIC) -> list[dict[str, str]]:
-    """Cautions of a document with those that must be shown and are missing added, in order of code."""
-    given = {item["code"]: dict(item) for item in document.get("cautions") or []}
+    """Cautions of a document with those that must be shown and are missing added, in order of code.
+
+    A caution that the document keeps in our own metric words is said again in the asked units.
+    """
+    own = {item["code"]: item["text"] for item in forecast_cautions(document)}
+    given = {
+        item["code"]: dict(item) for item in document.get("cautions") or [] if own.get(item["code"]) != item["text"]
+    }
     due = {item["code"]: item for item in forecast_cautions(document, units)}
     return [
         *(given.get(code, item) for code, item in due.items()),
@@ -28,8 +34,7 @@ def forecast_cautions(document: Document, units: Units = METRIC) -> list[dict[st
     """Cautions due with this forecast: G1 to G5, B1 to B3 where a ventilation class is shown, A1."""
     texts = {
         "G1": _one_profile(document, units),
-        "G2": "Not valid with fronts, sea or lake breezes, thunderstorm outflow, persistent rain, deep fog or snow cover; "
-        "the run does not look for signs of these.",
+        "G2": _not_valid(document),
         "G3": _definition(document, units),
         "G4": "Each change shown beside an input comes from one plausible step in it; together they do not include every error.",
         "G5": _repairs(document),
@@ -50,12 +55,29 @@ def forecast_cautions(document: Document, units: Units = METRIC) -> list[dict[st
     return [{"code": code, "text": text} for code, text in texts.items()]
 
 
+def _not_valid(document: Document) -> str:
+    """What the run does not hold for, and which signs of it the run looks for."""
+    snowy = any(
+        item.get("name") == "land cover" and "snow" in str(item.get("value")).lower()
+        for item in document.get("assumptions") or []
+    )
+    cases = "thunderstorm outflow, persistent rain or deep fog"
+    if not snowy:
+        cases = "thunderstorm outflow, persistent rain, deep fog or snow cover"
+    wet = any("saturated" in str(item.get("code")) for item in document.get("doubts") or [])
+    found = "found it, see the doubts" if wet else "found none"
+    return (
+        f"Not valid with fronts, sea or lake breezes, {cases}. Of their signs the run looks only for saturated air "
+        f"(fog, stratus), and {found}."
+    )
+
+
 def _one_profile(document: Document, units: Units) -> str:
     profile = document.get("profile") or {}
     clock = Clock.of(document)
     place = profile.get("station") or profile.get("file") or "a place not named"
     distance = profile.get("distance_km")
-    away = "distance not known" if distance is None else f"{distance:.0f} km away"
+    away = "distance not known" if distance is None else f"{units.distance(distance)} away"
     rise = profile.get("height_difference_m")
     if rise is None:
         level = "height difference not known"

@@ -6,28 +6,41 @@ from collections.abc import Mapping
 from datetime import datetime
 from typing import Any
 
-from slab.wording import UNKNOWN, Clock, Units, compass
+from slab.wording import CLOUD_SHOWN, UNKNOWN, Clock, Units, compass
 
-__all__ = ["change_words", "cumulus_words", "day_sentences", "headline", "most_telling", "telling_sentence"]
+__all__ = ["cumulus_words", "day_sentences", "evening_depth", "gust_words", "headline"]
 
 Document = Mapping[str, Any]
 
+FEW_CUMULUS = 0.02  # cumulus fraction that hours after the first stay under for "mostly blue" (our choice)
+SCATTERED = 0.1  # cumulus fraction from which cumulus are not called few (our choice)
+CLEARLY = 0.1  # part of the first day's depth that a later day's must differ by to be told (our choice)
+CONVECTIVE = "the surface temperature at which the morning profile's own air would make cumulus without any mixing"
+
 
 def headline(document: Document, units: Units) -> str:
-    """One sentence: depth at its greatest, warmest hour, and whether cumulus forms."""
+    """One sentence: greatest depth, warmest and coldest hour with their days, and whether cumulus forms."""
     summary, clock = document["summary"], Clock.of(document)
-    depth = summary.get("mixing_depth_max_m")
-    warmest = summary.get("temperature_2m_max_C")
+    depth, warmest = summary.get("mixing_depth_max_m"), summary.get("temperature_2m_max_C")
+    coldest = summary.get("temperature_2m_min_C")
+
+    def at(key: str) -> str:
+        return clock.say(summary.get(key), utc=False, zone=False)
+
     parts = [
-        "The depth of the mixed layer is not known"
+        "Depth of the mixed layer not known"
         if depth is None
-        else f"The mixed layer reaches {units.height(depth)} above ground at "
-        f"{clock.say(summary.get('mixing_depth_max_time'), utc=False, zone=False)}",
-        "the highest temperature is not known"
+        else f"Mixed layer to {units.height(depth)} above ground at {at('mixing_depth_max_time')} local",
+        "highest temperature not known"
         if warmest is None
-        else f"the air {units.temperature(warmest)} at {clock.say(summary.get('temperature_2m_max_time'), utc=False)} time",
+        else f"highest temperature {units.temperature(warmest)} at {at('temperature_2m_max_time')}",
     ]
-    return f"{parts[0]}, {parts[1]}; {cumulus_words(document, units, short=True)}."
+    when = summary.get("temperature_2m_min_time")
+    if coldest is not None and when is not None:
+        parts.append(
+            f"lowest {units.temperature(coldest)} at {clock.say_with_day(when, utc=False).replace(' local', '')}"
+        )
+    return f"{', '.join(parts)}; {cumulus_words(document, units, short=True)}."
 
 
 def day_sentences(document: Document, units: Units) -> list[str]:
@@ -35,19 +48,19 @@ def day_sentences(document: Document, units: Units) -> list[str]:
     summary, clock = document["summary"], Clock.of(document)
     elevation = document["site"].get("elevation_m")
     sentences = [
-        _depth(summary, clock, units, elevation) + _later_day(document, clock, units),
+        _depth(summary, clock, units, elevation) + _later_days(document, clock, units),
         _temperature(summary, clock, units),
-        _breakup(document, clock, units),
-        _capital(cumulus_words(document, units)) + ".",
+        _breakup(document, clock),
+        _capital(cumulus_words(document, units)) + "." + _convective(summary, units),
         _wind(document, units),
-        _evening(summary, clock),
+        _evening(summary, clock) + evening_depth(document, units),
     ]
+    note = summary.get("dry_outflow_note")
     deep = summary.get("inverted_v_depth_m")
-    if deep is not None:
-        note = summary.get("dry_outflow_note")
+    if note and deep is not None:
         sentences.append(
-            f"Under the condensation level the air is dry adiabatic through {units.height(deep)} (inverted-V)"
-            + (f": {str(note).rstrip('.')}." if note else ".")
+            f"Under the condensation level the air is dry adiabatic through {units.height(deep)} (inverted-V): "
+            f"{str(note).rstrip('.')}."
         )
     excess = summary.get("superadiabatic_excess_K")
     if excess is not None:
@@ -57,48 +70,33 @@ def day_sentences(document: Document, units: Units) -> list[str]:
     return sentences
 
 
-def most_telling(document: Document) -> list[Document]:
-    """Assumed inputs with a computed change, the largest change of depth first."""
-    items = [item for item in document.get("assumptions") or [] if item.get("effect_on_depth_m") is not None]
-    return sorted(items, key=lambda item: -abs(float(item["effect_on_depth_m"])))
-
-
-def telling_sentence(document: Document, units: Units) -> str:
-    """Which assumed input would change the depth most; empty where no step was computed."""
-    telling = most_telling(document)
-    if not telling or not telling[0]["effect_on_depth_m"]:
-        return ""
-    return f"What would change the depth most: {telling[0]['name']} ({change_words(telling[0], units)})."
-
-
-def change_words(item: Document, units: Units) -> str:
-    """What the step in an assumed input changes: greatest depth, then highest temperature; empty where not computed."""
-    depth, warm = item.get("effect_on_depth_m"), item.get("effect_on_max_temperature_K")
-    changes = [
-        *([units.height_change(depth)] if depth is not None else []),
-        *([units.difference(warm, signed=True)] if warm is not None else []),
-    ]
-    return f"{item.get('step') or 'one step'}: {', '.join(changes)}" if changes else ""
-
-
-def _later_day(document: Document, clock: Clock, units: Units) -> str:
-    """The greatest depth of the days after the one the summary speaks of."""
-    said = document["summary"].get("mixing_depth_max_time")
-    if said is None:
-        return ""
+def _greatest_later(document: Document, clock: Clock, said: str) -> list[tuple[float, int]]:
+    """Greatest depth of each day after the one of a time, with its row."""
     first = clock.local(datetime.fromisoformat(said)).date()
-    later: dict[Any, tuple[float, str]] = {}
+    later: dict[Any, tuple[float, int]] = {}
     series = document["series"]
-    for time, depth, regime in zip(series["time"], series["mixing_depth_m"], series["regime"], strict=True):
+    rows = zip(series["time"], series["mixing_depth_m"], series["regime"], strict=True)
+    for n, (time, depth, regime) in enumerate(rows):
         day = clock.local(datetime.fromisoformat(time)).date()
-        if (
-            depth is not None
-            and regime in {"mixed", "decaying"}
-            and day > first
-            and depth > later.get(day, (0.0, ""))[0]
-        ):
-            later[day] = (depth, time)
-    return "".join(f" Later {units.height(depth)} at {clock.say(time)}." for depth, time in later.values())
+        convective = depth is not None and regime in {"mixed", "decaying"}
+        if convective and day > first and depth > later.get(day, (0.0, 0))[0]:
+            later[day] = (depth, n)
+    return list(later.values())
+
+
+def _later_days(document: Document, clock: Clock, units: Units) -> str:
+    """Depths of later days that exceed the first day's or differ clearly from it."""
+    summary, times = document["summary"], document["series"]["time"]
+    said, depth = summary.get("mixing_depth_max_time"), summary.get("mixing_depth_max_m")
+    if said is None or depth is None:
+        return ""
+    text = ""
+    for later, n in _greatest_later(document, clock, said):
+        more = later > depth and units.height(later) != units.height(depth)
+        if more or abs(later - depth) >= CLEARLY * depth:
+            ends = " (run ends)" if n == len(times) - 1 else ""
+            text += f" Later {units.height(later)} at {clock.say(times[n])}{ends}."
+    return text
 
 
 def _depth(summary: Document, clock: Clock, units: Units, elevation: float | None) -> str:
@@ -117,12 +115,16 @@ def _temperature(summary: Document, clock: Clock, units: Units) -> str:
         value = summary.get(f"temperature_2m_{which}_C")
         if value is None:
             return UNKNOWN
-        return f"{units.temperature(value)} at {clock.say(summary.get(f'temperature_2m_{which}_time'))}"
+        return f"{units.temperature(value)} at {clock.say_with_day(summary.get(f'temperature_2m_{which}_time'))}"
 
     humidity = summary.get("relative_humidity_2m_min_pct")
-    dry = "not known" if humidity is None else f"{humidity:.0f} %"
+    dry = UNKNOWN if humidity is None else f"{humidity:.0f} %"
+    when = summary.get("relative_humidity_2m_min_time")
+    if humidity is not None and when is not None:
+        dry += f" at {clock.say(when)}"
     return (
-        f"The highest temperature at 2 m is {at('max')}, the lowest {at('min')}; the lowest relative humidity is {dry}."
+        f"The highest temperature at {units.length(2.0)} is {at('max')}, the lowest after it {at('min')}; "
+        f"the lowest relative humidity is {dry}."
     )
 
 
@@ -134,7 +136,7 @@ def _window(summary: Document, key: str, clock: Clock) -> str:
     return f"about {clock.say(summary[key], half_hours=True)}"
 
 
-def _breakup(document: Document, clock: Clock, units: Units) -> str:
+def _breakup(document: Document, clock: Clock) -> str:
     summary = document["summary"]
     needed, expected = summary.get("inversion_heat_needed_MJ_m2"), summary.get("inversion_heat_expected_MJ_m2")
     if needed is not None and needed <= 0.0:
@@ -153,17 +155,56 @@ def cumulus_words(document: Document, units: Units, *, short: bool = False) -> s
     """Cumulus onset and base, or "no cumulus", or that it is not known."""
     summary, clock = document["summary"], Clock.of(document)
     onset = summary.get("cumulus_onset_time")
+    if onset is None:
+        known = any(value is not None for value in document["series"].get("cumulus_fraction") or [])
+        return "no cumulus" if known else "cumulus is not known"
+    when = clock.say(onset, half_hours=True, utc=not short, zone=not short)
+    base = _base(document, units, short=short)
+    hours = _hours_after(document, clock, onset)
+    later = [fraction for _, fraction, _ in hours[1:]]
+    if hours and later and max(later) < FEW_CUMULUS and hours[0][1] < SCATTERED:
+        return f"a few cumulus around {when}, then mostly blue, {base}"
+    return f"cumulus from about {when}, {base}"
+
+
+def _hours_after(document: Document, clock: Clock, onset: str) -> list[tuple[datetime, float, float | None]]:
+    """Time, cumulus fraction and condensation level of the rows of the onset's day, from the one nearest before it."""
+    series, begun = document["series"], datetime.fromisoformat(onset)
+    levels = series.get("condensation_level_m") or [None] * len(series["time"])
+    rows = [
+        (moment, float(fraction), level)
+        for moment, fraction, level in zip(
+            map(datetime.fromisoformat, series["time"]), series.get("cumulus_fraction") or [], levels, strict=False
+        )
+        if fraction is not None and clock.local(moment).date() == clock.local(begun).date()
+    ]
+    return [row for row in rows if row[0] >= begun]
+
+
+def _base(document: Document, units: Units, *, short: bool) -> str:
+    """Range of the cloud base over the hours with cumulus."""
+    summary, clock = document["summary"], Clock.of(document)
+    first = summary.get("cumulus_base_m")
+    hours = _hours_after(document, clock, summary["cumulus_onset_time"])
+    known = [level for _, fraction, level in hours if fraction >= CLOUD_SHOWN and level is not None]
+    known += [first] if first is not None else []
+    if not known:
+        return "base not known"
+    low, high = min(known), max(known)
+    low_text = units.height_number(low)
+    span = "" if low_text == units.height_number(high) else f"{low_text} to "
+    if short:
+        return f"base {span}{units.height(high)}"
+    elevation = document["site"].get("elevation_m")
+    if span and elevation is not None and units.name == "us":
+        sea = [units.height_number(value + elevation) for value in (low, high)]
+        return f"base {span}{units.height(high)} above ground ({sea[0]} to {sea[1]} ft above sea level)"
+    return f"base {span}{units.above_ground(high, elevation)}"
+
+
+def _convective(summary: Document, units: Units) -> str:
     warm = summary.get("convective_temperature_C")
-    tail = "" if short or warm is None else f" (convective temperature {units.temperature(warm)})"
-    if onset is not None:
-        base = summary.get("cumulus_base_m")
-        high = "base not known" if base is None else f"base {units.height(base)}"
-        if not short and base is not None:
-            high = f"base {units.above_ground(base, document['site'].get('elevation_m'))}"
-        return f"cumulus from about {clock.say(onset, half_hours=True, utc=not short, zone=not short)}, {high}{tail}"
-    if any(value is not None for value in document["series"].get("cumulus_fraction") or []):
-        return f"no cumulus{tail}"
-    return f"cumulus is not known{tail}"
+    return "" if warm is None else f" The convective temperature, {CONVECTIVE}, is {units.temperature(warm)}."
 
 
 def _direction(document: Document) -> float | None:
@@ -174,19 +215,30 @@ def _direction(document: Document) -> float | None:
     return None if value is None else float(value)
 
 
+def gust_words(document: Document, units: Units) -> str:
+    """Range of the gusts mixed down, for which hours, and whose winds aloft they are."""
+    low, high = (document["summary"].get(f"gust_{which}_m_s") for which in ("low", "high"))
+    if low is None or high is None:
+        return "gusts are not known"
+    held = any(
+        item.get("key") == "profile.later" and item.get("source") == "assumed"
+        for item in document.get("assumptions") or []
+    )
+    aloft = "the winds aloft held from the release" if held else "the winds aloft of the run"
+    return (
+        f"gusts mixed down at any time of the day are {units.speed_number(low)} to {units.speed(high)}, "
+        f"from the layer's mean wind to the strongest reached, by {aloft}"
+    )
+
+
 def _wind(document: Document, units: Units) -> str:
     summary, from_deg = document["summary"], _direction(document)
     speed = summary.get("transport_wind_m_s")
     direction = "" if from_deg is None or speed is None else f" from the {compass(from_deg)}"
     text = (
         f"At the greatest depth the transport wind is {units.speed(speed)}{direction}, "
-        f"ventilation {units.ventilation(summary.get('ventilation_m2_s'))}"
+        f"ventilation {units.ventilation(summary.get('ventilation_m2_s'))}; {gust_words(document, units)}."
     )
-    low, high = summary.get("gust_low_m_s"), summary.get("gust_high_m_s")
-    if low is None or high is None:
-        text += "; gusts are not known."
-    else:
-        text += f"; gusts mixed down {units.speed(low).split()[0]} to {units.speed(high)}."
     named = summary.get("ventilation_class")
     if named:
         text += (
@@ -202,10 +254,37 @@ def _evening(summary: Document, clock: Clock) -> str:
         ("inversion_onset_time", "a surface inversion forms"),
         ("mixing_end_time", "convective mixing ends"),
     )
-    known = [f"{words} {_window(summary, key, clock)}" for key, words in events if summary.get(key) is not None]
+    known: dict[str, list[str]] = {}
+    for key, words in events:
+        if summary.get(key) is not None:
+            known.setdefault(_window(summary, key, clock), []).append(words)
     if not known:
         return "When the evening inversion forms is not known from these hours."
-    return f"In the evening {', '.join(known)}."
+    parts = [f"{_joined(words)} {when}" for when, words in known.items()]
+    return f"In the evening {'; '.join(parts)}."
+
+
+def evening_depth(document: Document, units: Units) -> str:
+    """What becomes of the depth after the day; empty where the run holds no residual layer over a night."""
+    series = document["series"]
+    tops = series.get("residual_top_m") or []
+    methods = series.get("depth_method") or [""] * len(tops)
+    mixed = next((n for n, regime in enumerate(series["regime"]) if regime in {"mixed", "decaying"}), len(tops))
+    left = [
+        top
+        for top, method in list(zip(tops, methods, strict=False))[mixed:]
+        if top is not None and str(method).startswith("stress")
+    ]
+    if not left:
+        return ""
+    return (
+        " From then on the depth is that of shear-driven mixing; the day's layer stays above it as the residual layer, "
+        f"up to {units.height(left[0])}."
+    )
+
+
+def _joined(words: list[str]) -> str:
+    return words[0] if len(words) == 1 else f"{', '.join(words[:-1])} and {words[-1]}"
 
 
 def _capital(text: str) -> str:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+import re
 from collections.abc import Mapping
 from dataclasses import dataclass
 from datetime import UTC, datetime
@@ -20,12 +21,19 @@ from forcing.units import (
     round_to,
 )
 
-__all__ = ["METRIC", "US", "Clock", "Units", "number", "units_named"]
+__all__ = ["METRIC", "US", "Clock", "Units", "cloud_percent", "number", "units_named"]
 
 Document = Mapping[str, Any]
 
 OPEN_GROUND_ROUGHNESS_M = 0.03  # short grass; Davenport class 3, "open" (Wieringa 1992)
 UNKNOWN = "not known"
+MILE_M = 1609.344
+LEAST_ABSOLUTE_K = 100.0  # a number of kelvin above this is a (potential) temperature, not a difference; it stays
+CLOUD_SHOWN = 0.01  # [1] least cumulus fraction that is drawn, and printed as other than 0 % (our choice)
+_QUANTITY = re.compile(
+    r"(?<![\w.])(?P<first>[-+]?\d+(?:\.\d+)?)(?:(?P<join> to | and )(?P<second>[-+]?\d+(?:\.\d+)?))?"
+    r" (?P<unit>km|m/s|m|°?C|K)\b(?![/²2])"
+)
 
 
 def number(value: float, step: float) -> str:
@@ -55,11 +63,21 @@ class Units:
             return 50.0 if metres >= 500.0 else 10.0
         return 100.0 if metres >= 500.0 else 50.0 if metres >= 60.0 else 10.0
 
+    def height_number(self, metres: float) -> str:
+        """Height without its unit, rounded as everywhere in sentences, tables and pictures."""
+        return number(self.height_value(metres), self.height_step(abs(metres)))
+
     def height(self, metres: float | None) -> str:
         """Height with its unit."""
-        if metres is None:
-            return UNKNOWN
-        return f"{number(self.height_value(metres), self.height_step(abs(metres)))} {self.height_unit}"
+        return UNKNOWN if metres is None else f"{self.height_number(metres)} {self.height_unit}"
+
+    def distance(self, kilometres: float) -> str:
+        """Distance over the ground with its unit: km or miles."""
+        return f"{kilometres:.0f} km" if self.name == "metric" else f"{1000.0 * kilometres / MILE_M:.0f} mi"
+
+    def length(self, metres: float) -> str:
+        """A small length with its unit, to two figures."""
+        return f"{self.height_value(metres):.2g} {self.height_unit}"
 
     def above_ground(self, metres: float | None, elevation: float | None) -> str:
         """Height above ground in words; us adds the height above sea level."""
@@ -78,28 +96,32 @@ class Units:
         """Temperature in the display unit."""
         return celsius if self.name == "metric" else celsius * 1.8 + 32.0
 
+    def temperature_number(self, celsius: float) -> str:
+        """Temperature without its unit, rounded as everywhere in sentences, tables and pictures."""
+        return number(self.temperature_value(celsius), 0.1 if self.name == "metric" else 1.0)
+
     def temperature(self, celsius: float | None) -> str:
         """Temperature with its unit."""
-        if celsius is None:
-            return UNKNOWN
-        step = 0.1 if self.name == "metric" else 1.0
-        return f"{number(self.temperature_value(celsius), step)} {self.temperature_unit}"
+        return UNKNOWN if celsius is None else f"{self.temperature_number(celsius)} {self.temperature_unit}"
 
     def difference(self, kelvin: float, *, signed: bool = False) -> str:
         """Temperature difference with its unit."""
         value, unit = (kelvin, "K") if self.name == "metric" else (kelvin * 1.8, "°F")
         text = number(value, 0.1)
-        return f"{'+' if signed and not text.startswith('-') else ''}{text} {unit}"
+        plus = signed and text != "0.0" and not text.startswith("-")
+        return f"{'+' if plus else ''}{text} {unit}"
 
     def speed_value(self, metres_per_second: float) -> float:
         """Wind aloft or transport wind in the display unit: m/s or kt."""
         return metres_per_second if self.name == "metric" else metres_per_second / KNOT_M_S
 
+    def speed_number(self, metres_per_second: float) -> str:
+        """Wind speed without its unit, rounded as everywhere in sentences, tables and pictures."""
+        return number(self.speed_value(metres_per_second), 0.1 if self.name == "metric" else 1.0)
+
     def speed(self, metres_per_second: float | None) -> str:
         """Wind speed with its unit."""
-        if metres_per_second is None:
-            return UNKNOWN
-        return f"{number(self.speed_value(metres_per_second), 0.1 if self.name == 'metric' else 1.0)} {self.speed_unit}"
+        return UNKNOWN if metres_per_second is None else f"{self.speed_number(metres_per_second)} {self.speed_unit}"
 
     def surface_wind_value(self, ten_metre: float, roughness: float = OPEN_GROUND_ROUGHNESS_M) -> float:
         """10 m wind in m/s, or the 20 ft wind in mph by the neutral logarithmic profile over a roughness [m]."""
@@ -114,12 +136,35 @@ class Units:
             return square_metres_per_second
         return square_metres_per_second / SQUARE_METRES_PER_S_PER_KNOT_FOOT
 
+    def ventilation_number(self, square_metres_per_second: float) -> str:
+        """Ventilation to two figures (common practice) without its unit."""
+        return two_figures(self.ventilation_value(square_metres_per_second))
+
     def ventilation(self, square_metres_per_second: float | None) -> str:
-        """Ventilation to two figures (common practice) with its unit."""
+        """Ventilation to two figures with its unit."""
         if square_metres_per_second is None:
             return UNKNOWN
-        value = self.ventilation_value(square_metres_per_second)
-        return f"{two_figures(value)} {self.ventilation_unit}"
+        return f"{self.ventilation_number(square_metres_per_second)} {self.ventilation_unit}"
+
+    def restyle(self, words: str) -> str:
+        """Words of an input, a doubt or a definition with the metric quantities in them in these units."""
+        return words if self.name == "metric" else _QUANTITY.sub(self._restyled, words)
+
+    def _restyled(self, found: re.Match[str]) -> str:
+        unit = found["unit"].removeprefix("°")
+        texts = [self._quantity(float(text), unit) for text in (found["first"], found["second"]) if text is not None]
+        if unit == "K" and abs(float(found["first"])) > LEAST_ABSOLUTE_K:
+            return found[0]
+        return (found["join"] or "").join([*(text.split()[0] for text in texts[:-1]), texts[-1]])
+
+    def _quantity(self, value: float, unit: str) -> str:
+        if unit == "m":
+            return self.height(value) if abs(value) >= 10.0 else self.length(value)
+        if unit == "m/s":
+            return self.speed(value)
+        if unit == "C":
+            return self.temperature(value)
+        return self.distance(value) if unit == "km" else self.difference(value)
 
 
 METRIC = Units("metric", "m", "m/s", "°C", "m²/s")
@@ -146,6 +191,11 @@ def two_figures(value: float) -> str:
         return "0"
     step = 10.0 ** (math.floor(math.log10(abs(value))) - 1)
     return number(value, step)
+
+
+def cloud_percent(fraction: float) -> str:
+    """Cumulus fraction in per cent; 0 where there is less than is drawn."""
+    return number(100.0 * fraction, 1.0) if fraction >= CLOUD_SHOWN else "0"
 
 
 _POINTS = ("north", "north-east", "east", "south-east", "south", "south-west", "west", "north-west")
@@ -195,3 +245,25 @@ class Clock:
             text += f" on {local:%a} {local.day} {local:%b}"
         text += " local" if zone else ""
         return f"{text} ({moment:%H:%M} UTC)" if utc else text
+
+    def day_word(self, iso: str) -> str:
+        """``this morning``, ``this afternoon``, ``tonight``, ``tomorrow morning``, counted from the first row's day."""
+        local = self.local(datetime.fromisoformat(iso))
+        days = (local.date() - self.local(self.start).date()).days
+        if local.hour >= 18:
+            return "tonight" if days == 0 else "tomorrow night" if days == 1 else f"in the night of day {days + 1}"
+        part = "morning" if local.hour < 12 else "afternoon"
+        if days == 0:
+            return f"this {part}"
+        return f"tomorrow {part}" if days == 1 else f"in the {part} of day {days + 1}"
+
+    def say_with_day(self, iso: str | None, *, utc: bool = True) -> str:
+        """``05:30 local tomorrow morning, Wed 15 Jul (11:30 UTC)``; the date only where it is not the first day's."""
+        if iso is None:
+            return UNKNOWN
+        moment = datetime.fromisoformat(iso).astimezone(UTC)
+        local = self.local(moment)
+        other = local.date() != self.local(self.start).date()
+        dated = f", {local:%a} {local.day} {local:%b}" if other else ""
+        tail = f" ({moment:%H:%M} UTC)" if utc else ""
+        return f"{local:%H:%M} local {self.day_word(iso)}{dated}{tail}"

@@ -85,6 +85,8 @@ def command(
             from slab.products.forecast_text import forecast_text
 
             outputs.text("-", forecast_text(document, units))
-    for warning in document["warnings"]:
+    from slab.inputs_words import real_warnings
+
+    for warning in real_warnings(document):
         remark(f"warning: {warning}", quiet=quiet)
     finish([one["text"] for one in document["doubts"]], accept=accept_doubt, quiet=quiet)

@@ -2,17 +2,19 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterator, Mapping, Sequence
-from datetime import datetime
-from typing import Any
+from collections.abc import Callable, Mapping, Sequence
+from datetime import datetime, timedelta
+from typing import Any, NamedTuple
 
-from slab.wording import OPEN_GROUND_ROUGHNESS_M, US, Clock, Units, compass, number, two_figures
+from slab.wording import OPEN_GROUND_ROUGHNESS_M, US, Clock, Units, cloud_percent, compass, number
 
-__all__ = ["blocks", "hourly_table", "roughness_of"]
+__all__ = ["METHODS", "blocks", "hourly_table", "roughness_of"]
 
 Document = Mapping[str, Any]
 Column = tuple[str, str, str, Callable[[Any], str]]
 MISSING = "-"
+METHODS = "depth is by the slab top, by the stress of shear-driven mixing, or by the bulk Richardson number"
+NARROW = 2.0  # a night's depths further apart than this factor are told by their greatest, not as a range (our choice)
 
 
 def roughness_of(document: Document) -> float:
@@ -23,13 +25,6 @@ def roughness_of(document: Document) -> float:
 def _columns(units: Units, roughness: float) -> list[Column]:
     """Name, unit, series name and format of each column."""
     metric = units.name == "metric"
-    temperature_step = 0.1 if metric else 1.0
-
-    def height(value: float) -> str:
-        return number(units.height_value(value), 10.0 if metric else 50.0)
-
-    def warmth(value: float) -> str:
-        return number(units.temperature_value(value), temperature_step)
 
     def change(value: float) -> str:
         return number(value if metric else value * 1.8, 0.1)
@@ -37,18 +32,19 @@ def _columns(units: Units, roughness: float) -> list[Column]:
     surface_wind = ("wind", "m/s") if metric else ("wind", "mph")
     return [
         ("state", "", "regime", str),
-        ("depth", units.height_unit, "mixing_depth_m", height),
-        ("temp", units.temperature_unit, "temperature_2m_C", warmth),
-        ("dew pt", units.temperature_unit, "dewpoint_2m_C", warmth),
-        ("humid", "%", "relative_humidity_2m_pct", lambda value: number(value, 1.0)),
+        ("depth", units.height_unit, "mixing_depth_m", units.height_number),
+        ("by", "", "depth_method", lambda text: str(text).split()[0]),
+        ("temp", units.temperature_unit, "temperature_2m_C", units.temperature_number),
+        ("dew", units.temperature_unit, "dewpoint_2m_C", units.temperature_number),
+        ("hum", "%", "relative_humidity_2m_pct", lambda value: number(value, 1.0)),
         (*surface_wind, "wind_10m_m_s", lambda value: number(units.surface_wind_value(value, roughness), 0.1 if metric else 1.0)),
-        ("transp", units.speed_unit, "transport_wind_m_s", lambda value: number(units.speed_value(value), 0.1 if metric else 1.0)),
+        ("transp", units.speed_unit, "transport_wind_m_s", units.speed_number),
         ("from", "deg", "transport_wind_from_deg", lambda value: number(value % 360.0, 10.0)),
-        ("ventil", units.ventilation_unit, "ventilation_m2_s", lambda value: two_figures(units.ventilation_value(value))),
-        ("condens", units.height_unit, "condensation_level_m", height),
-        ("cumul", "%", "cumulus_fraction", lambda value: number(100.0 * value, 1.0)),
-        ("invers", units.height_unit, "inversion_depth_m", height),
-        ("stren", "K" if metric else "°F", "inversion_strength_K", change),
+        ("ventil", units.ventilation_unit, "ventilation_m2_s", units.ventilation_number),
+        ("cond", units.height_unit, "condensation_level_m", units.height_number),
+        ("cum", "%", "cumulus_fraction", cloud_percent),
+        ("inv", units.height_unit, "inversion_depth_m", units.height_number),
+        ("str", "K" if metric else "°F", "inversion_strength_K", change),
     ]  # fmt: skip
 
 
@@ -57,13 +53,15 @@ def hourly_table(document: Document, units: Units) -> list[str]:
     series, clock = document["series"], Clock.of(document)
     moments = [datetime.fromisoformat(text) for text in series["time"]]
     columns = [column for column in _columns(units, roughness_of(document)) if column[2] in series]
-    offset = clock.offset()
-    grid = [["local", "utc", *(name for name, *_ in columns)], [offset[3:], "", *(unit for _, unit, *_ in columns)]]
+    grid = [["local", "utc", *(name for name, *_ in columns)], ["", "", *(unit for _, unit, *_ in columns)]]
     for n, moment in enumerate(moments):
-        cells = [_cell(series[key][n], form) for _, _, key, form in columns]
+        unknown = series["mixing_depth_m"][n] is None
+        cells = [
+            MISSING if unknown and key == "depth_method" else _cell(series[key][n], form) for _, _, key, form in columns
+        ]
         grid.append([f"{clock.local(moment):%H:%M}", f"{moment:%H:%M}", *cells])
     widths = [max(len(row[n]) for row in grid) for n in range(len(grid[0]))]
-    words = {n + 2 for n, column in enumerate(columns) if column[3] is str}
+    words = {n + 2 for n, column in enumerate(columns) if column[2] in {"regime", "depth_method"}}
     lines = [_aligned(row, widths, words) for row in grid]
     out = lines[:2]
     day = None
@@ -87,7 +85,18 @@ def _aligned(row: Sequence[str], widths: Sequence[int], words: set[int]) -> str:
     return "  ".join(cells).rstrip()
 
 
-def _stretches(document: Document) -> Iterator[tuple[str, list[int]]]:
+class _Stretch(NamedTuple):
+    """Rows of one block of hours, with the edges of the block."""
+
+    name: str
+    night: bool
+    rows: list[int]
+    begin: datetime
+    end: datetime
+    cut: bool  # whether the run ends inside it
+
+
+def _stretches(document: Document) -> list[_Stretch]:
     """Rows grouped into today, tonight, tomorrow, ... by the sun; 06 to 18 local where the sun's times are missing."""
     clock = Clock.of(document)
     sun = document.get("sun") or {}
@@ -99,12 +108,24 @@ def _stretches(document: Document) -> Iterator[tuple[str, list[int]]]:
             groups.append((light, []))
         groups[-1][1].append(n)
     first = clock.local(moments[0]).date()
-    for light, rows in groups:
+    edges = [moments[0], *(_edge(moments[rows[0]], light, sun, clock) for light, rows in groups[1:]), moments[-1]]
+    found = []
+    for n, (light, rows) in enumerate(groups):
         opening = clock.local(moments[rows[0]])
         days = (opening.date() - first).days
         if not light and opening.hour < 12 and days > 0:
             days -= 1  # the small hours belong to the evening before
-        yield _named(light, days), rows
+        found.append(_Stretch(_named(light, days), not light, rows, edges[n], edges[n + 1], n == len(groups) - 1))
+    return found
+
+
+def _edge(row: datetime, light: bool, sun: Document, clock: Clock) -> datetime:
+    """Sunrise or sunset at or just before the first row of a block."""
+    rise, fall = sun.get("sunrise"), sun.get("sunset")
+    if not (rise and fall):
+        return clock.local(row).replace(hour=6 if light else 18, minute=0)
+    moment = datetime.fromisoformat(rise if light else fall)
+    return row - timedelta(seconds=(row - moment).total_seconds() % 86400.0)
 
 
 def _named(light: bool, days: int) -> str:
@@ -123,34 +144,31 @@ def _is_day(moment: datetime, sun: Document, clock: Clock) -> bool:
 
 
 def blocks(document: Document) -> list[str]:
-    """One line a block in us units: ranges of depth, temperature, humidity and winds."""
+    """A few lines a block in us units: depth at its deepest hour, ranges of temperature, humidity and winds."""
     clock = Clock.of(document)
-    elevation = document["site"].get("elevation_m")
     roughness = roughness_of(document)
     lines = []
 
     def near_ground(value: float) -> float:
         return US.surface_wind_value(value, roughness)
 
-    for name, rows in _stretches(document):
-        series = {key: [values[n] for n in rows] for key, values in document["series"].items()}
-        begin, end = (clock.local(datetime.fromisoformat(series["time"][n])) for n in (0, -1))
-        lines.append(f"{name}, {begin:%H:%M} to {end:%H:%M} local")
-        lines.append(f"  mixing depth      {_depths(series.get('mixing_depth_m', []), elevation)}")
-        night = name.endswith("night") or name.startswith("night")
-        which, pick = ("lowest", min) if night else ("highest", max)
+    for block in _stretches(document):
+        series = {key: [values[n] for n in block.rows] for key, values in document["series"].items()}
+        begin, end = clock.local(block.begin), clock.local(block.end)
+        lines.append(f"{block.name}, {begin:%H:%M} to {end:%H:%M} local{', where the run ends' if block.cut else ''}")
+        lines += [f"  mixing depth      {text}" for text in _depths(document, series, clock, night=block.night)]
+        which, pick = ("lowest", min) if block.night else ("highest", max)
         lines.append(
             f"  {which + ' temp':<16}  {_five(_pick(series, 'temperature_2m_C', pick, US.temperature_value), '°F')}"
         )
-        dry, dry_pick = ("highest", max) if night else ("lowest", min)
+        dry, dry_pick = ("highest", max) if block.night else ("lowest", min)
         lines.append(
             f"  {dry + ' humid':<16}  {_five(_pick(series, 'relative_humidity_2m_pct', dry_pick, float), '%')}"
         )
-        lines.append(f"  20 ft wind        {_range(series.get('wind_10m_m_s', []), US.surface_wind_value, 'mph')}")
+        lines.append(f"  20 ft wind        {_range(series.get('wind_10m_m_s', []), near_ground, 'mph')}")
         wind = _range(series.get("transport_wind_m_s", []), US.speed_value, "kt")
         lines.append(f"  transport wind    {wind}{_from(series)}")
-        vent = [value for value in series.get("ventilation_m2_s", []) if value is not None]
-        lines.append(f"  ventilation       {'not known' if not vent else 'up to ' + US.ventilation(max(vent))}")
+        lines.append(f"  ventilation       {_most(series, clock)}")
     return lines
 
 
@@ -169,16 +187,49 @@ def _five(value: float | None, unit: str) -> str:
     return f"{low} to {low + 5} {unit}"
 
 
-def _depths(values: Sequence[float | None], elevation: float | None) -> str:
-    known = [value for value in values if value is not None]
+def _depths(document: Document, series: Document, clock: Clock, *, night: bool) -> list[str]:
+    """A night's range; else the greatest depth with its hour, and between which hours it is over half of that."""
+    elevation = document["site"].get("elevation_m")
+    known = [
+        (depth, time) for depth, time in zip(series["mixing_depth_m"], series["time"], strict=True) if depth is not None
+    ]
     if not known:
-        return "not known"
-    low, high = min(known), max(known)
-    text = f"{_span(US.height(low).split()[0], US.height(high).split()[0])} ft above ground"
+        return ["not known"]
+    low, (high, when) = min(known)[0], max(known, key=lambda pair: pair[0])
+    if night and high <= NARROW * low:
+        return [_heights(low, high, elevation)]
+    summary = document["summary"]
+    exact, exact_time = summary.get("mixing_depth_max_m"), summary.get("mixing_depth_max_time")
+    if exact is not None and exact_time is not None and series["time"][0] <= exact_time <= series["time"][-1]:
+        high, when = exact, exact_time
+    limit = 500.0 * max(1.0, US.height_value(high) // 1000.0)
+    deep = [time for depth, time in known if US.height_value(depth) > limit]
+    lines = [f"{_heights(high, high, elevation)}, at {_hour(when, clock)}"]
+    if len(deep) > 1:
+        lines.append(f"over {limit:.0f} ft above ground from {_hour(deep[0], clock)} to {_hour(deep[-1], clock)}")
+    return lines
+
+
+def _hour(iso: str, clock: Clock) -> str:
+    return f"{clock.local(datetime.fromisoformat(iso)):%H:%M}"
+
+
+def _heights(low: float, high: float, elevation: float | None) -> str:
+    text = f"{_span(US.height_number(low), US.height_number(high))} ft above ground"
     if elevation is not None:
         above = [number(US.height_value(value + elevation), 100.0) for value in (low, high)]
         text += f", {_span(*above)} ft above sea level"
     return text
+
+
+def _most(series: Document, clock: Clock) -> str:
+    """Greatest ventilation with its hour."""
+    rows = zip(series.get("ventilation_m2_s", []), series["time"], strict=False)
+    known = [(value, time) for value, time in rows if value is not None]
+    if not known:
+        return "not known"
+    most, when = max(known)
+    return f"up to {US.ventilation(most)}, at {_hour(when, clock)}"
 
 
 def _range(values: Sequence[float | None], convert: Callable[[float], float], unit: str) -> str:

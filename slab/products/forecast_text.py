@@ -8,14 +8,24 @@ from datetime import datetime
 from typing import Any
 
 from slab.cautions import complete
-from slab.narrative import change_words, day_sentences, telling_sentence
-from slab.products.forecast_table import blocks, hourly_table, roughness_of
+from slab.inputs_words import assumed_lines, known_words, real_warnings
+from slab.narrative import day_sentences, headline
+from slab.products.forecast_table import METHODS, blocks, hourly_table, roughness_of
+from slab.products.series import RICHARDSON, SLAB_TOP, STRESS
 from slab.wording import US, Clock, Units, units_named
 
 __all__ = ["forecast_text"]
 
 Document = Mapping[str, Any]
 WIDTH = 110
+METHOD_NAMES = (SLAB_TOP, STRESS, RICHARDSON)
+SAID_ABOVE = {"gust range"}  # definitions that the sentences of the day hold already
+REGIME_WORDS = {
+    "turbulent": "stable, and the wind can carry all the heat that the ground asks of the air",
+    "intermittent": "stable, and the wind can carry only a part of it, half or more",
+    "very stable": "stable, and the wind can carry less than half of it",
+    "unstable": "the ground heats the air already, but the night's column still carries the hour",
+}
 
 
 def forecast_text(document: Document, units: str = "metric") -> str:
@@ -36,17 +46,17 @@ def forecast_text(document: Document, units: str = "metric") -> str:
     chosen = units_named(units)
     sections = [
         _heading(document, chosen),
+        _wrapped([headline(document, chosen)]) + _doubts(document, chosen),
         _assumptions(document, chosen),
-        _wrapped([*day_sentences(document, chosen), telling_sentence(document, chosen)]),
+        _wrapped(day_sentences(document, chosen)),
         ["by blocks of hours (temperature and humidity as five-unit ranges)", *_indented(blocks(document))]
         if chosen is US
         else [],
         [*_table_title(document, chosen), *hourly_table(document, chosen)],
         _definitions(document, chosen),
         _listed("repairs made to the profile", _repairs(document)),
-        _listed("warnings", document.get("warnings") or []),
+        _listed("warnings", [chosen.restyle(text) for text in real_warnings(document)]),
         _listed("cautions", [f"{item['code']} {item['text']}" for item in complete(document, chosen)]),
-        _listed("doubts", [f"{item['code']}: {item['text']}" for item in document.get("doubts") or []]),
     ]
     return "\n\n".join("\n".join(section) for section in sections if section) + "\n"
 
@@ -58,14 +68,18 @@ def _heading(document: Document, units: Units) -> list[str]:
     lines = [
         f"{document.get('title') or name}",
         f"site: {name}, {_place(site)}, {_elevation(site, units)}; local time {clock.zone.key}, {clock.offset()}",
-        f"start: {start:%A} {start.day} {start:%B %Y} {clock.say(document['series']['time'][0])}",
-        f"profile: {_profile(profile, clock, units)}",
+        f"start: {start:%A} {start.day} {start:%B %Y} {clock.say(document['series']['time'][0])}{_sun(document, clock)}",
+        f"profile: {_profile(document, profile, clock, units)}",
     ]
+    return [part for line in lines for part in textwrap.wrap(line, WIDTH, subsequent_indent="  ")]
+
+
+def _sun(document: Document, clock: Clock) -> str:
     sun = document.get("sun") or {}
     rise, fall = sun.get("sunrise"), sun.get("sunset")
-    if rise and fall:
-        lines.append(f"sun: rises {clock.say(rise)}, sets {clock.say(fall)}")
-    return [part for line in lines for part in textwrap.wrap(line, WIDTH, subsequent_indent="  ")]
+    if not (rise and fall):
+        return ""
+    return f"; sunrise {clock.say(rise, utc=False, zone=False)}, sunset {clock.say(fall, utc=False, zone=False)}"
 
 
 def _place(site: Document) -> str:
@@ -82,18 +96,17 @@ def _elevation(site: Document, units: Units) -> str:
     return f"{units.height_value(height):.0f} {units.height_unit} above sea level"
 
 
-def _profile(profile: Document, clock: Clock, units: Units) -> str:
+def _profile(document: Document, profile: Document, clock: Clock, units: Units) -> str:
     parts = [str(profile.get("file") or "file not named")]
     if profile.get("station"):
         parts.append(str(profile["station"]))
-    valid = profile.get("valid")
-    if valid:
-        moment = datetime.fromisoformat(valid)
-        parts.append(f"released {moment:%Y-%m-%d %H:%M} UTC ({clock.local(moment):%H:%M} local)")
-    if profile.get("age_hours") is not None:
-        parts.append(f"{profile['age_hours']:.1f} h old at the start")
+    if profile.get("valid"):
+        parts.append(_released(document, profile, clock))
+    doubted = any(item["code"] == "profile_age" for item in document.get("doubts") or [])
+    if doubted and profile.get("age_hours") is not None:
+        parts.append(f"{profile['age_hours']:.0f} h old now")
     distance, rise = profile.get("distance_km"), profile.get("height_difference_m")
-    parts.append("distance not known" if distance is None else f"{distance:.0f} km away")
+    parts.append("distance not known" if distance is None else f"{units.distance(distance)} away")
     if rise is None:
         parts.append("height difference not known")
     elif abs(rise) < 5.0:
@@ -103,71 +116,67 @@ def _profile(profile: Document, clock: Clock, units: Units) -> str:
     return ", ".join(parts)
 
 
+def _released(document: Document, profile: Document, clock: Clock) -> str:
+    """When the balloon left the ground, by the clock or counted from the start of the run."""
+    moment = datetime.fromisoformat(profile["valid"])
+    age = profile.get("age_at_start_hours")
+    if age is None:
+        age = (datetime.fromisoformat(document["series"]["time"][0]) - moment).total_seconds() / 3600.0
+    if abs(age) < 0.05:
+        return "released at the start of the run"
+    said = f"released {moment:%Y-%m-%d %H:%M} UTC ({clock.local(moment):%H:%M} local)"
+    return f"{said}, {abs(age):.1f} h {'before' if age > 0 else 'after'} the start of the run"
+
+
+def _doubts(document: Document, units: Units) -> list[str]:
+    return _wrapped([f"doubt, {item['code']}: {units.restyle(item['text'])}" for item in document.get("doubts") or []])
+
+
 def _assumptions(document: Document, units: Units) -> list[str]:
     """Inputs by source; beside an assumed one the change that a plausible step in it makes."""
-    items = document.get("assumptions") or []
-    if not items:
-        return []
-    lines: list[str] = []
-    headings = (
-        (
-            "assumed",
-            "assumed, with the change that a plausible step makes to the greatest depth and the highest temperature",
-        ),
-        ("given", "given by the user"),
-        ("observed", "observed"),
-    )
-    for source, heading in headings:
-        chosen = [item for item in items if item.get("source") == source]
-        if chosen:
-            lines.append(heading)
-        for item in chosen:
-            why = f" ({item['why']})" if item.get("why") else ""
-            lines += _wrapped([f"{item['name']}: {item['value']}{why}"], "  ")
-            step = change_words(item, units) if source == "assumed" else ""
-            lines += _wrapped([step], "      ") if step else []
-    return lines
+    assumed = assumed_lines(document, units, letters=WIDTH - 2)
+    lines = [
+        "assumed, most telling first; then a plausible step: change of the greatest depth, of the highest temperature"
+    ]
+    lines = [*lines, *_wrapped(assumed, "  ")] if assumed else []
+    known = ((source, known_words(document, source, units)) for source in ("given", "observed"))
+    return lines + [line for source, words in known if words for line in _wrapped([f"{source}: {words}"], more="  ")]
 
 
 def _table_title(document: Document, units: Units) -> list[str]:
     wind = "10 m"
     if units is US:
-        wind = f"20 ft, from 10 m by the neutral logarithmic profile over a roughness of {roughness_of(document):g} m"
-    return [
-        "hour by hour: depth, condensation level and inversion top above ground;",
-        f"wind at {wind}; transport wind through the depth; a dash is missing or none",
-    ]
+        rough = units.length(roughness_of(document))
+        wind = f"20 ft, from {units.length(10.0)} by the neutral logarithmic profile over a roughness of {rough}"
+    title = (
+        f"hour by hour, local time {Clock.of(document).offset()}: depth, condensation level (cond) and inversion top (inv) above "
+        f"ground; {METHODS}; wind at {wind}; transport wind through the depth; cum cumulus; str inversion strength; "
+        "a dash is missing or none"
+    )
+    return _wrapped([title])
 
 
 def _definitions(document: Document, units: Units) -> list[str]:
     summary = document["summary"]
-    rows = [
-        (item["definition"], units.height(item.get("height_m")), "")
-        for item in summary.get("other_definitions") or []
-    ]  # fmt: skip
-    known = [item["height_m"] for item in summary.get("other_definitions") or [] if item.get("height_m") is not None]
-    used = summary.get("mixing_depth_definition") or "not named"
-    lines = [f"depth is by the {used}: {units.height(summary.get('mixing_depth_max_m'))} at its greatest"]
-    if known:
-        lines[0] += f"; other definitions give {units.height(min(known))} to {units.height(max(known))}"
-    lines += _rows(rows)
-    morning = [
-        (item["definition"], units.height(item.get("height_m")), item.get("detail") or "")
-        for item in (document.get("profile") or {}).get("tops") or []
+    used, greatest = (
+        summary.get("mixing_depth_definition") or "not named",
+        units.height(summary.get("mixing_depth_max_m")),
+    )
+    lines = [
+        f"depth is by the {used}, {greatest} at its greatest; the same hour {_tops(summary.get('other_definitions'), units)}"
     ]
-    if morning:
-        lines += ["tops in the measured profile", *_rows(morning)]
-    for name, text in (document.get("definitions") or {}).items():
-        lines += textwrap.wrap(f"{name}: {text}", WIDTH, initial_indent="  ", subsequent_indent="    ")
-    return lines
+    known = {**REGIME_WORDS, **(document.get("definitions") or {})}
+    unseen = {"mixed", "decaying", *REGIME_WORDS, *METHOD_NAMES} - {
+        *document["series"]["regime"],
+        *(document["series"].get("depth_method") or METHOD_NAMES),
+    }
+    lines += [f"{name}: {units.restyle(text)}" for name, text in known.items() if name not in unseen | SAID_ABOVE]
+    return _wrapped(lines, more="  ")
 
 
-def _rows(rows: Iterable[tuple[str, str, str]]) -> list[str]:
-    rows = list(rows)
-    if not rows:
-        return []
-    first, second = (max(len(row[n]) for row in rows) for n in (0, 1))
-    return [f"  {name:<{first}}  {value:>{second}}  {detail}".rstrip() for name, value, detail in rows]
+def _tops(items: Iterable[Document] | None, units: Units) -> str:
+    known = [f"{item['definition']} {units.height(item.get('height_m'))}" for item in items or []]
+    return f"by other definitions: {', '.join(known)}" if known else "no other definition gives a value"
 
 
 def _repairs(document: Document) -> list[str]:
@@ -182,11 +191,10 @@ def _listed(heading: str, items: Iterable[str]) -> list[str]:
     return [heading, *_wrapped(items, "  ")] if items else []
 
 
-def _wrapped(items: Iterable[str], indent: str = "") -> list[str]:
+def _wrapped(items: Iterable[str], indent: str = "", more: str | None = None) -> list[str]:
+    more = indent + "  " * bool(indent) if more is None else more
     return [
-        line
-        for item in items
-        for line in textwrap.wrap(item, WIDTH, initial_indent=indent, subsequent_indent=indent + "  " * bool(indent))
+        line for item in items for line in textwrap.wrap(item, WIDTH, initial_indent=indent, subsequent_indent=more)
     ]
 
 
