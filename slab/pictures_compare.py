@@ -26,6 +26,7 @@ STYLES = (
 )
 LEFT, RIGHT = 0.062, 0.985
 WIDE, SIDE = 0.585, 0.675
+SHOWN = 3  # changes whose numbers fit beside the curves
 NUMBERS = (
     ("temperature_2m_max_C", "highest 2 m temperature"),
     ("temperature_2m_min_C", "lowest 2 m temperature"),
@@ -196,7 +197,7 @@ def _side(document: Document, units: Units, ruler: Ruler) -> Lines:
     width = RIGHT - SIDE
     lines: Lines = []
     many = document["days"]["used"] > 1
-    for change in document["changes"][:4]:
+    for change in document["changes"][:SHOWN]:
         lines += [(line, True) for line in ruler.wrap(change["name"], width, bold=True)]
         for name, words in NUMBERS:
             row = change["answers"][name]["difference"]
@@ -212,8 +213,8 @@ def _side(document: Document, units: Units, ruler: Ruler) -> Lines:
             factor, unit = scale_of("K", units)
             text = f"per +0.10 {one['of']}: {number(row['median'] * factor, 0.01)} {unit} at the warmest hour"
             lines += [(line, False) for line in ruler.wrap(text, width, indent="   ")]
-    if len(document["changes"]) > 4:
-        lines.append((f"and {len(document['changes']) - 4} more in the text output", False))
+    if len(document["changes"]) > SHOWN:
+        lines.append((f"and {len(document['changes']) - SHOWN} more in the text output", False))
     lines.append(("smallest area", True))
     lines += [(line, False) for line in ruler.wrap(_area(document, units), width, indent="   ")]
     return lines + _scored(document, ruler, width)

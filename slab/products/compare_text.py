@@ -89,7 +89,7 @@ def _spread(row: Document, kind: str, units: Units, document: Document) -> str:
     text = _said(row["median"], kind, units)
     if document["days"]["used"] > 1 and row["median"] is not None:
         low, high = (_said(row[key], kind, units) for key in ("low", "high"))
-        text += f" ({low.rsplit(' ', 1)[0] if ' ' in low else low} to {high})"
+        text += f" ({low.removesuffix(' ' + high.partition(' ')[2])} to {high})"
     return text
 
 
@@ -115,7 +115,7 @@ def _head(document: Document, units: Units) -> list[str]:
     for one in days["left_out"]:
         lines += _wrapped(f"left out {one['count']}: {one['reason']} (first {one['first']})", "  ")
     lines += _wrapped(
-        f"differences are changed minus base, {document['spread']}; threshold {document['threshold_C']:g} °C"
+        f"differences are changed minus base, {document['spread']}; threshold {units.temperature(document['threshold_C'])}"
     )
     return lines
 
