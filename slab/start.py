@@ -78,10 +78,11 @@ def _solar_hour(scenario: Scenario, time: Array) -> Array:
 
 
 def yesterday(scenario: Scenario) -> tuple[float, float]:
-    """Coldest and warmest air at the ground [K] of a day like this one.
+    """Coldest and warmest air at the ground [K] of a day like this one, from what the hour of the release can tell.
 
-    A dawn sounding holds both: the surface air, and the residual layer brought dry-adiabatically to the ground. Of an
-    afternoon release only the warm end is known; the cold end is then assumed 12 K lower.
+    A dawn sounding holds both: the surface air, and the residual layer brought dry-adiabatically to the ground. A release
+    by day holds the warm end, best in the afternoon; the cold end is then assumed 12 K lower. A release in the evening holds
+    the warm end in the residual layer, and the night has still to cool its surface air by as much again as it has done.
     """
     profile = scenario.profile
     exner = (profile.surface_pressure / P_REFERENCE) ** KAPPA
@@ -89,9 +90,12 @@ def yesterday(scenario: Scenario) -> tuple[float, float]:
     above = float(np.interp(YESTERDAY_HEIGHT, profile.height, profile.theta)) * exner
     hour = float(_solar_hour(scenario, np.array([profile.valid.timestamp()]))[0])
     if 9.0 < hour < 20.0:
-        warmest = max(surface, min(above, surface + 2.0))
-        return warmest - DAILY_RANGE, warmest
-    return surface, min(max(above, surface + 1.0), surface + 25.0)
+        warmest = max(surface, min(above, surface + (2.0 if hour > HOTTEST_SOLAR_HOUR else DAILY_RANGE)))
+        return min(surface, warmest - DAILY_RANGE), warmest
+    warmest = min(max(above, surface + 1.0), surface + 25.0)
+    if hour >= 20.0:
+        return surface - min(warmest - surface, 0.5 * DAILY_RANGE), warmest
+    return surface, warmest
 
 
 def ground_start(scenario: Scenario, ground: Ground) -> GroundStart:
