@@ -24,7 +24,7 @@ from slab.products.forecast import document_of, forecast
 NOW = datetime(2026, 7, 14, 13, tzinfo=UTC)
 TEXT, LIST = str, list
 NUMBER = (int, float)
-SERIES = {
+SERIES: dict[str, Any] = {
     "time": TEXT, "regime": TEXT, "mixing_depth_m": NUMBER, "depth_method": TEXT, "residual_top_m": NUMBER, "theta_K": NUMBER,
     "mixing_ratio_g_kg": NUMBER, "temperature_2m_C": NUMBER, "dewpoint_2m_C": NUMBER, "relative_humidity_2m_pct": NUMBER,
     "wind_10m_m_s": NUMBER, "transport_wind_m_s": NUMBER, "transport_wind_from_deg": NUMBER, "ventilation_m2_s": NUMBER,
@@ -33,7 +33,7 @@ SERIES = {
     "inversion_depth_m": NUMBER, "inversion_strength_K": NUMBER, "temperature_10m_C": NUMBER, "temperature_1_5m_C": NUMBER,
     "temperature_9m_C": NUMBER,
 }  # fmt: skip
-SUMMARY = {
+SUMMARY: dict[str, Any] = {
     "mixing_depth_max_m": NUMBER, "mixing_depth_max_time": TEXT, "temperature_2m_max_C": NUMBER, "temperature_2m_max_time": TEXT,
     "temperature_2m_min_C": NUMBER, "temperature_2m_min_time": TEXT, "relative_humidity_2m_min_pct": NUMBER,
     "inversion_gone_time": TEXT, "inversion_heat_needed_MJ_m2": NUMBER, "inversion_heat_expected_MJ_m2": NUMBER,
