@@ -285,17 +285,21 @@ def mean_below(air: Aloft, mass: float, values: Numbers) -> float:
 
 
 def distinct(levels: NDArray[np.float64]) -> NDArray[np.float64]:
-    """Increasing levels without those that repeat the one below to within a thousandth (m or kg m-2)."""
-    return np.asarray(levels[np.concatenate(([True], np.diff(levels) > 1e-3))])
+    """Levels in order, without those that repeat the one below to within a thousandth (m or kg m-2).
+
+    numpy's own `unique` would load masked arrays, which costs a third of a start.
+    """
+    ordered = np.sort(levels)
+    return np.asarray(ordered[np.concatenate(([True], np.diff(ordered) > 1e-3))])
 
 
 def from_profile(profile: Profile) -> Aloft:
     """Tabulate a measured profile up to 12 km or its own top."""
     top = min(float(profile.height[-1]), TABLE_TOP)
     even = np.concatenate((np.arange(0.0, min(top, COARSE_FROM), FINE_STEP), np.arange(COARSE_FROM, top, COARSE_STEP)))
-    levels = np.unique(np.concatenate((even, profile.height[profile.height <= top], [top])))
+    levels = np.concatenate((even, profile.height[profile.height <= top], [top]))
     if top > SINKING_CAP_HEIGHT:
-        levels = np.unique(np.append(levels, SINKING_CAP_HEIGHT))
+        levels = np.append(levels, SINKING_CAP_HEIGHT)
     levels = distinct(levels)
     theta, humidity, u, v = (
         np.interp(levels, profile.height, x) for x in (profile.theta, profile.humidity, profile.u, profile.v)

@@ -72,7 +72,7 @@ def nodes_now(air: Aloft, at: Offsets) -> Array:
     where = origins(air, mass, -at.sunk)
     top = min(float(where[-1]), float(mass[-1]))
     inside = where[where < top]
-    return distinct(np.unique(np.concatenate((inside, [0.0, top], [air.cap] if air.cap < top else []))))
+    return distinct(np.concatenate((inside, [0.0, top], [air.cap] if air.cap < top else [])))
 
 
 def column_after_slab(air: Aloft, later: Aloft | None, at: Offsets, y: list[float], wind: tuple[float, float],
@@ -89,7 +89,8 @@ def column_after_slab(air: Aloft, later: Aloft | None, at: Offsets, y: list[floa
     low, high = top - half * top, min(top + half * top, float(node_height[-1]))
     kept = node_height[(node_height < low - TOO_CLOSE) | (node_height > high + TOO_CLOSE)]
     lid = [float(np.interp(air.cap, mass, height))] if air.cap < nodes[-1] else []
-    levels = np.unique(np.concatenate((kept, [0.0, low, high], lid)))
+    levels = np.sort(np.concatenate((kept, [0.0, low, high], lid)))
+    levels = levels[np.concatenate(([True], np.diff(levels) > 0.0))]
     level_mass = np.interp(levels, height, mass)
     aloft = moved(air, later, at, level_mass)
     slab = slab_at(y[MASS], y[HEAT], y[VAPOUR], _integrals(air, later, at, y[MASS]))

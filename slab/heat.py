@@ -20,6 +20,7 @@ from numpy.typing import NDArray
 
 from forcing.air import CP_DRY, GRAVITY, condensation_level, each, exner, saturation_humidity, temperature
 from forcing.sounding import Profile
+from slab.column import distinct
 from slab.inversions import Inversion
 
 Array = NDArray[np.float64]
@@ -71,7 +72,7 @@ class _Column:
 def _fine(profile: Profile, top: float) -> _Column:
     """Levels up to `top` [m], with steps of 10 m between them; pressure is exponential between levels."""
     steps = np.arange(0.0, top, STEP)
-    z = np.unique(np.concatenate([steps, profile.height[profile.height < top], [top]]))
+    z = distinct(np.concatenate([steps, profile.height[profile.height < top], [top]]))
     pressure = np.exp(np.interp(z, profile.height, np.log(profile.pressure)))
     theta = np.interp(z, profile.height, profile.theta)
     return _Column(z, pressure, theta, np.interp(z, profile.height, profile.humidity))

@@ -152,7 +152,8 @@ def build_grid(
 def cell_means(edges: Array, height: Array, values: Array) -> Array:
     """Mean over each cell of a profile that is linear between `height` (last value held above), shape (n,)."""
     inside = height[(height > edges[0]) & (height < edges[-1])]
-    points = np.union1d(edges, inside)
+    points = np.sort(np.concatenate((edges, inside)))
+    points = points[np.concatenate(([True], np.diff(points) > 0.0))]
     y = np.interp(points, height, values)
     running = np.concatenate(([0.0], np.cumsum(np.diff(points) * 0.5 * (y[1:] + y[:-1]))))
     return np.asarray(np.diff(np.interp(edges, points, running)) / np.diff(edges), dtype=np.float64)

@@ -4,13 +4,13 @@ from __future__ import annotations
 
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass, replace
-from importlib.metadata import PackageNotFoundError, version
 from pathlib import Path
 from typing import Any
 
 from forcing.errors import ModelError, ScenarioError
 from forcing.scenario_types import Scenario
 from forcing.weather import ObservedTable
+from slab import __version__
 from slab.cycle import Known, Run, run
 from slab.products.changes import BLENDING, Change, Changed, apply
 from slab.products.compare_answers import HOURLY, QUANTITIES, Answered, answers
@@ -155,7 +155,7 @@ def compare(days: Sequence[Day], changes: Sequence[Change], *, threshold: float 
         "definitions": {name: one.meaning for name, one in (dict(QUANTITIES) | dict(HOURLY)).items()} | {"blending": BLENDING},
         "run": {
             "hours": first.run.hours, "entrainment": first.run.entrainment, "flux_ratio": first.run.flux_ratio,
-            "version": _program(), "scenario": first.source, "settings": first.settings,
+            "version": __version__, "scenario": first.source, "settings": first.settings,
         },
     }  # fmt: skip
     if sensitivity:
@@ -165,12 +165,6 @@ def compare(days: Sequence[Day], changes: Sequence[Change], *, threshold: float 
     document["cautions"] = planning_cautions(document)
     return document
 
-
-def _program() -> str:
-    try:
-        return version("daylayer")
-    except PackageNotFoundError:
-        return "not installed"
 
 
 def middle(pairs: Sequence[Pair]) -> Pair:

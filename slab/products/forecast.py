@@ -5,15 +5,16 @@ from __future__ import annotations
 import math
 from dataclasses import replace
 from datetime import UTC, datetime
-from importlib.metadata import PackageNotFoundError, version
 from typing import Any
 from zoneinfo import ZoneInfo
 
 import numpy as np
 
+from forcing.remarks import scenario_remarks
 from forcing.scenario import with_step
 from forcing.scenario_types import Assumption, Scenario
 from forcing.sun import sunrise_sunset
+from slab import __version__
 from slab.cautions import complete
 from slab.cycle import Known, Run, run
 from slab.march import Control
@@ -39,13 +40,6 @@ DEFINITIONS = {
     "gust range": "from the layer's mean wind to the strongest wind up to the top of the entrainment zone, winds aloft as held",
     "inversion": "lowest level where temperature stops rising, minus the lowest level kept (1.5 m)",
 }
-
-
-def _version() -> str:
-    try:
-        return version("daylayer")
-    except PackageNotFoundError:
-        return "not installed"
 
 
 def profile_document(profile: Any) -> dict[str, Any]:
@@ -105,7 +99,8 @@ def doubts(done: Run, now: datetime) -> list[dict[str, str]]:
         found.append(("profile_age", f"the profile is {age:.0f} h old, over {OLD_HOURS:.0f} h"))
     far, rise = distance_km(scenario), abs(scenario.original.elevation - scenario.site.elevation)
     if far > FAR_KM or rise > FAR_M:
-        found.append(("release_distance", f"the release is {far:.0f} km and {rise:.0f} m of height away"))
+        away = f"{far:.0f} km and " if math.isfinite(far) else ""
+        found.append(("release_distance", f"the release is {away}{rise:.0f} m of height away"))
     if done.stopped != "end of the run":
         found.append(("top_of_profile", f"the layer reaches the profile's top at {scenario.profile.height[-1]:.0f} m"))
     if _saturated(done):
@@ -125,10 +120,13 @@ def _saturated(done: Run) -> bool:
     return cloudy or fog
 
 
-def warnings(done: Run) -> list[str]:
-    """Remarks on the run that are no doubts."""
-    said = []
+def warnings(done: Run, now: datetime | None = None) -> list[str]:
+    """Remarks on the run and its inputs that are no doubts; on the age of the release only where ``now`` is given."""
     scenario = done.scenario
+    said = list(scenario_remarks(scenario))
+    days = math.nan if now is None else (now - scenario.original.valid).total_seconds() / 86400.0
+    if days >= ARCHIVE_DAYS:
+        said.append(f"the release is {days:.0f} days old: a case from the archive")
     if scenario.later is None:
         said.append("the air aloft is held as the balloon found it, but for sinking, advection and radiation")
         if scenario.run.hours > HELD_HOURS:
@@ -264,7 +262,7 @@ def document_of(done: Run, *, now: datetime | None = None, with_effects: bool = 
             "hours": scenario.run.hours, "output_minutes": scenario.run.output_minutes,
             "entrainment": scenario.run.entrainment, "flux_ratio": scenario.run.flux_ratio,
             "shear_factor": scenario.run.shear_factor, "spin_up_factor": scenario.run.spin_up_factor,
-            "stopped": done.stopped, "version": _version(), "scenario": scenario.source,
+            "stopped": done.stopped, "version": __version__, "scenario": scenario.source,
             "settings": scenario.settings,
         },
     }  # fmt: skip
