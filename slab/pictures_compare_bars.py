@@ -74,9 +74,7 @@ def draw_ranked(axes: Axes, document: Document, units: Units) -> None:
     axes.set_ylim(len(rows) - 0.4, -0.6)
     axes.tick_params(labelsize=SMALL)
     axes.set_xlabel(f"{unit}; hatched low, dark high end of range", fontsize=SMALL)
-    axes.set_title(
-        f"base's highest 2 m temperature by property, {found['day']}", fontsize=PLAIN, loc="right", pad=3.0
-    )
+    axes.set_title(f"base's highest 2 m temperature by property, {found['day']}", fontsize=PLAIN, loc="right", pad=3.0)
 
 
 def draw_days(axes: Axes, document: Document, units: Units) -> None:
