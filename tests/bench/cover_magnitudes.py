@@ -7,6 +7,7 @@ property table and the same ten invented days for every row. ``--sites`` adds mi
 from __future__ import annotations
 
 import argparse
+import math
 import os
 import sys
 import textwrap
@@ -56,7 +57,7 @@ def differences(row: Row, pairs: list[Pair], name: str) -> list[float]:
         gap = after - before
         if row.get("relative") and name == row["answer"]:
             gap /= before
-        if gap == gap:
+        if math.isfinite(gap):
             found.append(gap)
     return found
 
