@@ -13,7 +13,14 @@ from typing import TYPE_CHECKING, NamedTuple
 import numpy as np
 
 from forcing.free_air import free_air, free_from
-from forcing.scenario_parts import DEFAULT_COVER, DEFAULT_REBASE, DEFAULT_SOIL_MOISTURE, REBASE_FROM_M, SURFACE_KEYS
+from forcing.scenario_parts import (
+    DEFAULT_COVER,
+    DEFAULT_REBASE,
+    DEFAULT_SOIL_MOISTURE,
+    PLACE_KEYS,
+    REBASE_FROM_M,
+    SURFACE_KEYS,
+)
 from forcing.scenario_types import Assumption, Scenario
 
 if TYPE_CHECKING:
@@ -116,14 +123,22 @@ def _given(scenario: Scenario, section: str, key: str) -> bool:
 
 
 def _site(scenario: Scenario) -> Iterator[Assumption]:
-    keys = [key for key in ("latitude", "longitude", "elevation") if not _given(scenario, "site", key)]
+    keys = [key for key in PLACE_KEYS if not _given(scenario, "site", key)]
     if keys:
         yield Assumption(
             "site",
-            ", ".join(f"{key} {getattr(scenario.site, key):g}" for key in keys),
+            ", ".join(f"{key} {round(getattr(scenario.site, key), 1 if key == 'elevation' else 4):g}" for key in keys),
             ASSUMED,
             "not given: taken from the release site",
             key="site." + keys[0],
+        )
+    if math.isnan(scenario.original.latitude + scenario.original.longitude):
+        yield Assumption(
+            "position of the release",
+            "the site's",
+            ASSUMED,
+            "neither the file nor the user says where the balloon was released",
+            key="profile.latitude",
         )
     if not scenario.rebase:
         return

@@ -91,7 +91,7 @@ def _when(sounding: Sounding, valid: datetime | None, default: datetime | None, 
     raise ProfileError(
         f"the file does not say when the balloon was released{told}",
         place=place,
-        remedy="give the time with offset, such as 2026-07-01T12:00Z, as the profile's valid time",
+        remedy="give the time with offset: --valid 2026-07-01T12:00Z, or valid under [profile] of a scenario",
     )
 
 

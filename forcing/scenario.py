@@ -23,7 +23,7 @@ from forcing.scenario_parts import (
     read_profiles,
     read_run,
     read_weather_of,
-    release_elevation,
+    tells_elevation,
 )
 from forcing.scenario_types import (
     ENTRAINMENTS,
@@ -94,9 +94,22 @@ def _parsed(text: str, file: Path) -> dict[str, Any]:
     try:
         return tomllib.loads(text)
     except tomllib.TOMLDecodeError as problem:
+        if _is_profile(text):
+            raise ScenarioError(
+                "this looks like a profile, not a scenario", place=str(file), remedy=f"use --profile {file}"
+            ) from None
         raise ScenarioError(
             f"is not valid TOML: {problem}", place=str(file), remedy="texts need quotes, sections need [brackets]"
         ) from None
+
+
+def _is_profile(text: str) -> bool:
+    """Whether text that is no TOML is a sounding; a first line with = or [ was meant as TOML."""
+    from forcing.readers import looks_like_sounding
+
+    lines = (line.strip() for line in text.splitlines())
+    first = next((line for line in lines if line and (not line.startswith("#") or line[1:2].isalnum())), "")
+    return "=" not in first and not first.startswith("[") and looks_like_sounding(text)
 
 
 def build(settings: Settings, *, folder: Path, source: str, text: str = "", parts: Parts | None = None) -> Scenario:
@@ -213,7 +226,7 @@ _NEEDED_FLAGS = {
     "latitude": "--latitude (degrees north)",
     "longitude": "--longitude (degrees east)",
     "elevation": "--elevation (m above sea level)",
-    "time_zone": "--zone (IANA name such as Etc/GMT+6)",
+    "time_zone": "--zone (IANA name such as America/Chicago)",
     "valid": "--valid (time of the profile, such as 2026-07-01T12:00Z)",
 }
 
@@ -282,7 +295,7 @@ def from_flags(
     told = {
         "latitude": sounding.latitude if latitude is None else latitude,
         "longitude": sounding.longitude if longitude is None else longitude,
-        "elevation": release_elevation(sounding) if elevation is None else elevation,
+        "elevation": tells_elevation(sounding) or None if elevation is None else elevation,
         "time_zone": zone,
         "valid": sounding.valid if when is None else when,
     }
@@ -290,10 +303,10 @@ def from_flags(
     if lacking:
         raise ScenarioError(
             "the file does not say everything the forecast needs",
-            place=str(profile),
+            place=f"--profile {profile}",
             remedy="add " + ", ".join(lacking),
         )
-    del told["valid"]
-    settings["site"] = {"name": sounding.station or Path(profile).stem, **told}
+    place = {"latitude": latitude, "longitude": longitude, "elevation": elevation, "time_zone": zone}
+    settings |= _settings_of_flags({"site": {"name": sounding.station or Path(profile).stem, **place}})
     settings["title"] = title or f"From {Path(profile).name}"
     return build(settings, folder=Path(), source=FLAGS_SOURCE)

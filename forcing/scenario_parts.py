@@ -8,7 +8,6 @@ from dataclasses import dataclass
 from datetime import datetime
 from pathlib import Path
 from typing import TYPE_CHECKING
-from zoneinfo import ZoneInfo
 
 from forcing.errors import ScenarioError, WeatherError
 from forcing.scenario_types import (
@@ -22,9 +21,9 @@ from forcing.scenario_types import (
     VentilationClass,
 )
 from forcing.section import Section
-from forcing.series import suggestion
 from forcing.units import SQUARE_METRES_PER_S_PER_KNOT_FOOT
 from forcing.weather import COLUMNS, DEFAULTS, FluxTable, Weather, check_constant, read_fluxes, read_weather
+from forcing.zones import check_zone
 
 if TYPE_CHECKING:
     from forcing.cover import Cover
@@ -40,6 +39,7 @@ UNKNOWN_WIND_M_S = 5.0
 UNKNOWN_WIND_FROM_DEG = 270.0
 
 SURFACE_KEYS = ("cover", "soil_moisture", "fluxes")
+PLACE_KEYS = ("latitude", "longitude", "elevation")
 _PROFILE_KEYS = ("file", "format", "valid", "latitude", "longitude", "elevation", "later", "later_valid")
 
 
@@ -79,26 +79,7 @@ class Parts:
 
 def _zone(section: Section) -> str:
     name = section.text("time_zone", needed=True, example="Etc/GMT+6") or ""
-    try:
-        ZoneInfo(name)
-    except (ValueError, OSError, LookupError):
-        from zoneinfo import available_timezones
-
-        near = {one.lower(): one for one in available_timezones()}
-        raise ScenarioError(
-            f"'{name}' is not a time zone",
-            place=section.place("time_zone"),
-            remedy=_zone_remedy(name, near),
-        ) from None
-    return name
-
-
-def _zone_remedy(name: str, lower: Mapping[str, str]) -> str:
-    text = suggestion(name, lower)
-    if text.startswith("did you mean"):
-        found = text.split("'")[1]
-        return text.replace(found, lower[found])
-    return "write an IANA name such as Etc/GMT+6 or UTC"
+    return check_zone(name, place=section.place("time_zone"))
 
 
 def read_cover(section: Section, settings: Settings) -> tuple[Cover, float]:
@@ -128,20 +109,29 @@ def read_cover(section: Section, settings: Settings) -> tuple[Cover, float]:
     return found, DEFAULT_SOIL_MOISTURE if moisture is None else moisture
 
 
-def read_site(section: Section, sounding_position: tuple[float | None, float | None, float | None], title: str) -> Site:
-    """Site of the forecast; what the section does not say is taken from the release site."""
-    bounds = (
-        ("latitude", -90.0, 90.0, "degrees north"),
-        ("longitude", -180.0, 180.0, "degrees east"),
-        ("elevation", -450.0, 6500.0, "m above sea level"),
-    )
+_BOUNDS = {
+    "latitude": (-90.0, 90.0, "degrees north"),
+    "longitude": (-180.0, 180.0, "degrees east"),
+    "elevation": (-450.0, 6500.0, "m above sea level"),
+}
+
+
+def _position(section: Section, key: str, *, needed: bool = False) -> float | None:
+    low, high, unit = _BOUNDS[key]
+    return section.number(key, low, high, needed=needed, unit=unit)
+
+
+def read_site(section: Section, release: Profile, title: str) -> Site:
+    """Site of the forecast; what the section does not say is taken from the release."""
     zone = _zone(section)
-    values = []
-    for (key, low, high, unit), released in zip(bounds, sounding_position, strict=True):
-        value = section.number(key, low, high, needed=released is None, unit=unit)
-        values.append(released if value is None else value)
-    latitude, longitude, elevation = (math.nan if value is None else value for value in values)
-    return Site(section.text("name") or title, latitude, longitude, elevation, zone)
+
+    def here(key: str) -> float:
+        released = float(getattr(release, key))
+        value = _position(section, key, needed=math.isnan(released))
+        return released if value is None else value
+
+    name = section.text("name") or title
+    return Site(name, here("latitude"), here("longitude"), here("elevation"), zone)
 
 
 def _sounding(section: Section, folder: Path, file_key: str, valid_key: str) -> tuple[Sounding, datetime | None]:
@@ -162,49 +152,41 @@ def _sounding(section: Section, folder: Path, file_key: str, valid_key: str) -> 
     return sounding, valid
 
 
-def _prepared(sounding: Sounding, valid: datetime | None, site: Site, section: Section) -> Profile:
+def _prepared(sounding: Sounding, valid: datetime | None, site: Section, section: Section) -> Profile:
+    """The profile on the ground of its release; a position that nobody gives stays NaN."""
     from forcing.profile import prepare
 
-    latitude = section.number("latitude", -90.0, 90.0, unit="degrees north")
-    longitude = section.number("longitude", -180.0, 180.0, unit="degrees east")
-    elevation = section.number("elevation", -450.0, 6500.0, unit="m above sea level")
-    if latitude is None and sounding.latitude is None:
-        latitude = site.latitude
-    if longitude is None and sounding.longitude is None:
-        longitude = site.longitude
-    if elevation is None and release_elevation(sounding) is None:
-        elevation = site.elevation
+    elevation = _position(section, "elevation")
+    if elevation is None and not tells_elevation(sounding):
+        elevation = _position(site, "elevation", needed=True)
     return prepare(
         sounding,
         valid=valid if sounding.valid is None else None,
-        latitude=latitude,
-        longitude=longitude,
+        latitude=_position(section, "latitude"),
+        longitude=_position(section, "longitude"),
         elevation=elevation,
     )
 
 
-def release_elevation(sounding: Sounding) -> float | None:
-    """Elevation [m above sea level] that the file says, else its lowest height above sea level; None without either."""
+def tells_elevation(sounding: Sounding) -> bool:
+    """Whether the file says the release's elevation, or heights above sea level that it follows from."""
     if sounding.elevation is not None:
-        return sounding.elevation
-    heights = [float(height) for height in sounding.height_msl if math.isfinite(height)]
-    return min(heights) if heights and not sounding.heights_above_ground else None
+        return True
+    return not sounding.heights_above_ground and any(math.isfinite(height) for height in sounding.height_msl)
 
 
 def read_profiles(sections: Mapping[str, Section], folder: Path, title: str, parts: Parts | None) -> Profiles:
     """Profiles as released and on the ground of the site, by the named re-basing rule."""
     section = sections["profile"]
-    place = ("latitude", "longitude", "elevation")
-    if parts is not None and parts.same(section, _PROFILE_KEYS) and parts.same(sections["site"], place):
+    here = sections["site"]
+    if parts is not None and parts.same(section, _PROFILE_KEYS) and parts.same(here, PLACE_KEYS):
         original, later = parts.original, parts.later_original
-        site = read_site(sections["site"], (original.latitude, original.longitude, original.elevation), title)
     else:
-        sounding, valid = _sounding(section, folder, "file", "valid")
-        site = read_site(sections["site"], (sounding.latitude, sounding.longitude, release_elevation(sounding)), title)
-        original = _prepared(sounding, valid, site, section)
+        original = _prepared(*_sounding(section, folder, "file", "valid"), here, section)
         later = None
         if "later" in section.values:
-            later = _prepared(*_sounding(section, folder, "later", "later_valid"), site, section)
+            later = _prepared(*_sounding(section, folder, "later", "later_valid"), here, section)
+    site = read_site(here, original, title)
     if later is not None and later.valid <= original.valid:
         raise ScenarioError(
             f"the later profile is of {later.valid.isoformat()}, not after {original.valid.isoformat()}",

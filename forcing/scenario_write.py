@@ -12,8 +12,8 @@ from collections.abc import Iterator, Mapping
 from pathlib import Path
 
 from forcing.keys import KEYS
-from forcing.scenario_parts import DEFAULT_COVER, DEFAULT_REBASE, DEFAULT_SOIL_MOISTURE
-from forcing.scenario_types import RunOptions, Scenario
+from forcing.scenario_parts import DEFAULT_COVER, DEFAULT_REBASE, DEFAULT_SOIL_MOISTURE, PLACE_KEYS
+from forcing.scenario_types import Assumption, RunOptions, Scenario
 from forcing.weather import DEFAULTS
 
 _PATHS = ("file", "later", "fluxes")
@@ -57,12 +57,11 @@ def write_toml(scenario: Scenario, *, beside: str | Path | None = None) -> str:
             if key in values:
                 lines += _line(key, _written(key, values.pop(key), folder), meaning)
                 continue
-            note = assumed.get(f"{section}.{key}")
-            why = f"assumed: {note.value_text} ({note.why})" if note is not None else "not given"
-            shown = _example(scenario, section, key)
-            if section == "weather" and key in scenario.weather.series:
-                why, shown = "by hour from the file", ""
-            lines.append(f"# {key} = {shown}  # {meaning}; {why}" if shown else f"# {key} =  # {meaning}; {why}")
+            why = _why(scenario, section, key, assumed)
+            by_hour = section == "weather" and key in scenario.weather.series
+            shown = "" if by_hour else _example(scenario, section, key)
+            told = meaning if why in meaning else f"{meaning}; {why}"
+            lines.append(f"# {key} = {shown}  # {told}" if shown else f"# {key} =  # {told}")
         for key, value in values.items():
             lines += _line(key, _value(value), "in place of the property of the cover")
     for name, own in _mapping(scenario.settings.get("covers")).items():
@@ -71,6 +70,16 @@ def write_toml(scenario: Scenario, *, beside: str | Path | None = None) -> str:
     for change in changes if isinstance(changes, list | tuple) else ():
         lines += ["", "[[change]]", *(f"{key} = {_value(value)}" for key, value in _mapping(change).items())]
     return "\n".join(lines) + "\n"
+
+
+def _why(scenario: Scenario, section: str, key: str, assumed: Mapping[str, Assumption]) -> str:
+    """Why a key is left out."""
+    if section == "weather" and key in scenario.weather.series:
+        return "by hour from the file"
+    if section == "site" and key in PLACE_KEYS:
+        return "assumed: taken from the release site"
+    note = assumed.get(f"{section}.{key}")
+    return f"assumed: {note.value_text} ({note.why})" if note is not None else "not given"
 
 
 def _mapping(value: object) -> Mapping[str, object]:
@@ -93,7 +102,8 @@ def _written(key: str, value: object, folder: Path | None) -> str:
 def _example(scenario: Scenario, section: str, key: str) -> str:
     run = RunOptions()
     if section == "site":
-        return _value(getattr(scenario.site, key))
+        value = getattr(scenario.site, key)
+        return _value(round(value, 1 if key == "elevation" else 4) if key in PLACE_KEYS else value)
     if section == "run":
         usual = getattr(run, key)
         return "" if usual is None else _value(usual)

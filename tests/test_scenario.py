@@ -2,10 +2,13 @@
 
 from __future__ import annotations
 
+import re
 import sys
 from dataclasses import fields
 from datetime import UTC, datetime
 from pathlib import Path
+from typing import Any
+from zoneinfo import available_timezones
 
 import numpy as np
 import pytest
@@ -14,6 +17,7 @@ from hypothesis import strategies as st
 
 from forcing.assumptions import wind_near
 from forcing.errors import ProfileError, ScenarioError
+from forcing.remarks import scenario_remarks
 from forcing.scenario import (
     Scenario,
     bundled,
@@ -26,6 +30,7 @@ from forcing.scenario import (
     write_toml,
 )
 from forcing.sounding import Profile
+from forcing.zones import ABBREVIATIONS, check_zone, hours_from_sun
 
 PROFILE = """pressure_hPa,height_m,temperature_C,dewpoint_C,wind_dir_deg,wind_speed_m_s
 980,300,15,12,180,2
@@ -95,7 +100,10 @@ def test_the_least_scenario(folder: Path) -> None:
     assert case.profile.valid == datetime(2026, 7, 1, 11, 30, tzinfo=UTC)
     assert case.profile is case.original
     assert case.profile.elevation == 300.0
-    assert case.profile.latitude == 40.0  # the release is taken to be at the site
+    assert np.isnan(case.profile.latitude)  # nobody says where the balloon was released
+    assert np.isnan(case.profile.longitude)
+    release = next(one for one in case.assumptions if one.key == "profile.latitude")
+    assert (release.source, release.value_text) == ("assumed", "the site's")
     assert (case.run.hours, case.run.output_minutes, case.run.entrainment) == (36.0, 60.0, "sheared")
     assert (case.run.flux_ratio, case.run.shear_factor, case.run.spin_up_factor) == (0.2, None, None)
     assert case.end - case.start == 36 * 3600
@@ -212,6 +220,109 @@ def test_site_from_the_file(folder: Path) -> None:
     assert next(one for one in case.assumptions if one.name == "site").source == "assumed"
     flags = from_flags(profile=folder / "morning.csv", zone="UTC")
     assert flags.site == type(flags.site)("T1", 40.5, -99.0, 305.0, "UTC")
+    assert next(one for one in flags.assumptions if one.name == "site").source == "assumed"
+
+
+def _flags(folder: Path, name: str = "morning.csv", **changes: Any) -> Scenario:
+    usual = {"latitude": 40.0, "longitude": -100.5, "zone": "Etc/GMT+6", "valid": "2026-07-01T11:30Z"}
+    return from_flags(profile=folder / name, **{**usual, **changes})
+
+
+def test_the_site_stands_on_the_ground_of_the_prepared_profile(folder: Path) -> None:
+    rows = [line.split(",") for line in PROFILE.splitlines()]
+    feet = [rows[0], *([row[0], f"{float(row[1]) / 0.3048:.0f}", *row[2:]] for row in rows[1:])]
+    aloft = [rows[0], *([row[0], "" if n < 2 else row[1], *row[2:]] for n, row in enumerate(rows[1:]))]
+    for name, table in (("feet.csv", feet), ("aloft.csv", aloft)):
+        (folder / name).write_text("\n".join(map(",".join, table)) + "\n", encoding="ascii")
+        case = _flags(folder, name)
+        # 300 m is the height of the lowest level; over 900 hPa at 1035 m the two lowest are integrated
+        assert case.site.elevation == pytest.approx(300.0, abs=12.0)
+        assert case.site.elevation == case.profile.elevation
+        assert case.profile is case.original
+        assert case.rebase == ""
+        site = next(one for one in case.assumptions if one.name == "site")
+        assert (site.source, site.key) == ("assumed", "site.elevation")
+        assert site.value_text == f"elevation {round(case.site.elevation, 1):g}"
+
+
+def test_an_assumed_place_is_written_as_a_comment(folder: Path) -> None:
+    case = _flags(folder)
+    written = write_toml(case, beside=folder / "kept.toml").splitlines()
+    assert "# elevation = 300.0  # m above sea level; assumed: taken from the release site" in written
+    assert "latitude = 40.0  # degrees north" in written
+    assert not any("not given; not given" in line for line in written)
+    (folder / "kept.toml").write_text("\n".join(written), encoding="utf-8")
+    _same(load(folder / "kept.toml"), case)
+
+
+def test_no_height_anywhere_asks_for_the_elevation(folder: Path) -> None:
+    bare = [",".join(cell for n, cell in enumerate(line.split(",")) if n != 1) for line in PROFILE.splitlines()]
+    (folder / "bare.csv").write_text("\n".join(bare) + "\n", encoding="ascii")
+    with pytest.raises(ScenarioError, match="add --elevation"):
+        _flags(folder, "bare.csv")
+    (folder / "morning.csv").write_text("\n".join(bare) + "\n", encoding="ascii")
+    with pytest.raises(ScenarioError, match=r"\[site\] elevation: missing"):
+        _load(folder, base=TOML.replace("elevation = 300\n", ""))
+    assert _flags(folder, "bare.csv", elevation=310.0).profile.elevation == 310.0
+
+
+@pytest.mark.parametrize(
+    ("zone", "meant"),
+    [
+        ("CST", "America/Chicago"),
+        ("chicago", "America/Chicago"),
+        ("Europe/Viena", "Europe/Vienna"),
+        ("UTC-6", "Etc/GMT+6"),
+        ("+02:00", "Etc/GMT-2"),
+        ("nowhere at all", "America/Chicago"),
+    ],
+)
+def test_a_wrong_zone_is_answered_with_an_iana_name(zone: str, meant: str) -> None:
+    with pytest.raises(ScenarioError, match=f"(?i){re.escape(zone)}.*{re.escape(meant)}"):
+        check_zone(zone, place="--zone")
+
+
+def test_names_suggested_for_abbreviations_are_zones() -> None:
+    assert set(ABBREVIATIONS.values()) <= available_timezones()
+    assert not {name.upper() for name in ABBREVIATIONS} & available_timezones()
+
+
+def test_a_place_far_from_its_zone_is_remarked(folder: Path) -> None:
+    assert scenario_remarks(_flags(folder, zone="America/Chicago")) == ()
+    (said,) = scenario_remarks(_flags(folder, longitude=93.4, zone="America/Chicago"))
+    # 93.4 / 15 h ahead of UTC by the sun, 5 h behind by the clock in July
+    assert "11.2 h behind the sun at longitude 93.4" in said
+    assert "America/Chicago" in said
+    # beyond the date line the clock is a day ahead, not 24 h wrong: 157.4 W is 10.5 h behind UTC, the clock 14 h ahead
+    when = datetime(2026, 7, 1, tzinfo=UTC)
+    assert hours_from_sun("Pacific/Kiritimati", when, -157.4) == pytest.approx(14.0 - 24.0 + 157.4 / 15.0)
+
+
+def test_units_read_otherwise_and_doubtful_numbers_are_remarked(folder: Path) -> None:
+    rows = [line.split(",") for line in PROFILE.splitlines()]
+    kelvin = [rows[0], *([*row[:2], f"{float(row[2]) + 273.15:.2f}", *row[3:]] for row in rows[1:])]
+    fast = [rows[0], *([*row[:5], f"{7.0 * float(row[5]):.0f}"] for row in rows[1:])]
+    for name, table in (("kelvin.csv", kelvin), ("fast.csv", fast)):
+        (folder / name).write_text("\n".join(map(",".join, table)) + "\n", encoding="ascii")
+    assert scenario_remarks(_flags(folder, "kelvin.csv")) == (
+        "kelvin.csv: units repaired: temperature unit: values named C were kelvins: read as K",
+    )
+    (said,) = scenario_remarks(_flags(folder, "fast.csv"))
+    assert said.startswith("fast.csv: wind unit: 126 m/s")
+    assert "knots" in said
+
+
+@pytest.mark.parametrize("name", bundled_names())
+def test_nothing_is_remarked_on_bundled_inputs(name: str) -> None:
+    assert scenario_remarks(load(bundled(name))) == ()
+
+
+def test_a_profile_in_place_of_a_scenario_is_recognised(folder: Path) -> None:
+    with pytest.raises(ScenarioError, match=r"looks like a profile, not a scenario; use --profile .*morning.csv"):
+        load(folder / "morning.csv")
+    (folder / "broken.toml").write_text("pressure_gradient_wind_m_s = five\n", encoding="ascii")
+    with pytest.raises(ScenarioError, match="not valid TOML"):
+        load(folder / "broken.toml")
 
 
 def test_a_mixture_of_covers(folder: Path) -> None:

@@ -16,7 +16,7 @@ from forcing.sounding import Sounding
 
 FORMATS = ("csv", "temp", "igra")
 
-__all__ = ["FORMATS", "detect", "parse", "parse_all", "read_all", "read_sounding"]
+__all__ = ["FORMATS", "detect", "looks_like_sounding", "parse", "parse_all", "read_all", "read_sounding"]
 
 
 def detect(text: str, name: str) -> str:
@@ -29,18 +29,28 @@ def detect(text: str, name: str) -> str:
             place=f"{name}, line 1",
             remedy="save the data, not the page around it",
         )
-    if igra.looks_like(text):
-        return "igra"
-    if temp.looks_like(text):
-        return "temp"
-    if table.looks_like(text):
-        return "csv"
+    kind = _kind(text)
+    if kind is not None:
+        return kind
     first = next((line.strip() for line in text.splitlines() if line.strip()), "")[:40]
     raise ProfileError(
         f"format not recognised from {first!r}",
         place=f"{name}, line 1",
         remedy=f"name one of {', '.join(FORMATS)}, or give a CSV whose header names pressure_hPa and temperature_C",
     )
+
+
+def _kind(text: str) -> str | None:
+    if igra.looks_like(text):
+        return "igra"
+    if temp.looks_like(text):
+        return "temp"
+    return "csv" if table.looks_like(text) else None
+
+
+def looks_like_sounding(text: str) -> bool:
+    """Whether a text is of a format that is read here, by its first lines."""
+    return _kind(text) is not None
 
 
 def parse_all(

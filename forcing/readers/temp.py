@@ -15,7 +15,7 @@ from datetime import UTC, datetime, timedelta
 
 from forcing.errors import ProfileError
 from forcing.readers.temp_codes import depression, geopotential, temperature, wind
-from forcing.readers.text import NAN, WIDTH, Row, arrays, merge_rows
+from forcing.readers.text import ASK, NAN, WIDTH, Row, arrays, merge_rows
 from forcing.sounding import Repair, Sounding
 from forcing.units import KNOT_M_S
 
@@ -326,7 +326,7 @@ def _date(parts: Sequence[Part], valid: datetime | None, name: str) -> tuple[dat
         raise ProfileError(
             f"the message is of day {first.day} at {first.hour:02d} UTC, not within 3 h of {asked:%Y-%m-%dT%H:%MZ}",
             place=f"{name}, line {first.line}",
-            remedy="correct the valid time",
+            remedy=f"correct the valid time: {ASK}",
         )
     return released, best
 

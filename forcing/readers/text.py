@@ -15,6 +15,7 @@ from forcing.sounding import Array, Sounding
 
 WIDTH = timedelta(hours=3)  # a release belongs to an asked time within this
 NAN = float("nan")
+ASK = "--valid TIME, or valid under [profile] of a scenario"
 
 # First bytes of files that are not text (their published format descriptions), and what to do about each.
 MAGIC = (
@@ -129,17 +130,19 @@ def choose(soundings: list[Sounding], valid: datetime | None, name: str) -> Soun
         raise ProfileError(
             f"{len(soundings)} soundings in one file: {listing(soundings)}",
             place=name,
-            remedy="say which one by its valid time",
+            remedy=f"say which one: {ASK}",
         )
     timed = [s for s in soundings if s.valid is not None or s.nominal is not None]
     if not timed and len(soundings) == 1:
         return replace(soundings[0], valid=valid)
     near = min(timed, key=lambda s: distance(s, valid), default=None)
     if near is None or distance(near, valid) > WIDTH:
+        nearest = sorted(timed, key=lambda s: distance(s, valid)) or soundings
+        words = "; the nearest are" if len(nearest) > 1 else "; there is"
         raise ProfileError(
-            f"no sounding within 3 h of {valid:%Y-%m-%dT%H:%MZ}; there is {listing(soundings)}",
+            f"no sounding within 3 h of {valid:%Y-%m-%dT%H:%MZ}{words} {listing(nearest, whole=len(soundings))}",
             place=name,
-            remedy="ask for one of these times",
+            remedy=f"ask for one that is there: {ASK}",
         )
     others = [s for s in timed if s.station != near.station and distance(s, valid) == distance(near, valid)]
     if others:
@@ -156,11 +159,18 @@ def distance(sounding: Sounding, valid: datetime) -> timedelta:
     return min(abs(t - valid) for t in (sounding.valid, sounding.nominal) if t is not None)
 
 
-def listing(soundings: list[Sounding], most: int = 6) -> str:
-    """Station and time of the first few soundings, for messages."""
+def listing(soundings: list[Sounding], most: int = 6, *, whole: int | None = None) -> str:
+    """Station and time of the first few soundings, for messages; of more than that many also the span of time.
+
+    `whole` is the number the file holds, where the list leaves some out.
+    """
     words = []
     for sounding in soundings[:most]:
         time = sounding.nominal or sounding.valid
         words.append(f"{sounding.station} {time:%Y-%m-%dT%H:%MZ}" if time else f"{sounding.station} (no date)")
-    more = len(soundings) - most
-    return ", ".join(words) + (f" and {more} more" if more > 0 else "")
+    more = max(len(soundings), whole or 0) - len(words)
+    if more <= 0:
+        return ", ".join(words)
+    times = sorted(time for one in soundings if (time := one.nominal or one.valid) is not None)
+    span = f", from {times[0]:%Y-%m-%d} to {times[-1]:%Y-%m-%d}" if times else ""
+    return ", ".join(words) + f" and {more} more{span}"

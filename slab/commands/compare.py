@@ -120,6 +120,9 @@ def command(
     inputs: list[str] = []
     if many:
         listed, given = _many(case, flags, days, profiles, chosen, clear_only)
+        inputs = [case] if case is not None else []
+        if profiles is not None:
+            inputs += [str(one) for one in (Path(profiles), *Path(profiles).glob("*"))]
     else:
         from slab.products.changes import changes_of
         from slab.products.days import Day

@@ -77,6 +77,6 @@ class LazyGroup(click.Group):
 def main() -> None:
     """From one morning balloon profile to the day that follows.
 
-    Results are written to stdout, remarks to stderr. Exit codes: 0 done, 1 bad data or no answer, 2 bad usage, 3 done with a
-    doubt.
+    Results are written to stdout, remarks to stderr. Exit codes: 0 done; 1 bad data, also in a scenario file, or no answer
+    from it; 2 bad usage: a flag that is unknown, wrong or missing; 3 done with a doubt.
     """

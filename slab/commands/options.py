@@ -10,7 +10,8 @@ Options and the commands that take them:
     --hours N                       commands that run a case
     --profile --latitude --longitude --elevation --zone --cover     first use, commands that run a case
 
-Exit codes: 0 done; 1 bad data, or no answer from it; 2 bad usage; 3 done, with a doubt from `DOUBTS`.
+Exit codes: 0 done; 1 bad data, in a file, or no answer from it; 2 bad usage: a flag, its value, or one that is missing;
+3 done, with a doubt from `DOUBTS`.
 """
 
 from __future__ import annotations
@@ -18,7 +19,7 @@ from __future__ import annotations
 import contextlib
 import os
 import sys
-from collections.abc import Callable, Iterable
+from collections.abc import Callable, Iterable, Iterator
 from datetime import UTC, datetime
 from pathlib import Path
 from types import TracebackType
@@ -102,6 +103,33 @@ def _picture(ctx: click.Context, param: click.Parameter, value: str | None) -> s
     return value
 
 
+def _zone(ctx: click.Context, param: click.Parameter, value: str | None) -> str | None:
+    if value is not None:
+        from forcing.zones import check_zone
+
+        with _as_usage(ctx, param):
+            check_zone(value, place="")
+    return value
+
+
+def _cover(ctx: click.Context, param: click.Parameter, value: str | None) -> str | None:
+    if value is not None:
+        from forcing.own_covers import resolve
+
+        with _as_usage(ctx, param):
+            resolve(value, {})
+    return value
+
+
+@contextlib.contextmanager
+def _as_usage(ctx: click.Context, param: click.Parameter) -> Iterator[None]:
+    """Turn the error of a flag's value into one of usage."""
+    try:
+        yield
+    except DaylayerError as error:
+        raise click.BadParameter(str(error), ctx=ctx, param=param) from None
+
+
 json_option = click.option("--json", "json_file", metavar="FILE|-", help="Write the result as JSON; - is stdout.")
 csv_option = click.option("--csv", "csv_file", metavar="FILE|-", help="Write the table as CSV; - is stdout.")
 netcdf_option = click.option("--netcdf", "netcdf_file", metavar="FILE", help="Write the result as CF NetCDF.")
@@ -125,8 +153,10 @@ latitude_option = click.option("--latitude", type=click.FloatRange(-90.0, 90.0),
 longitude_option = click.option("--longitude", type=click.FloatRange(-180.0, 360.0), help="Degrees east.")
 elevation_option = click.option("--elevation", type=click.FloatRange(-500.0, 9000.0), help="Ground above sea level, m.")
 profile_option = click.option("--profile", "profile_file", metavar="FILE", help="A balloon profile to start from.")
-zone_option = click.option("--zone", metavar="NAME", help="Time zone, e.g. America/Chicago.")
-cover_option = click.option("--cover", metavar="NAME", help="Land cover; `daylayer covers` lists them.")
+zone_option = click.option("--zone", metavar="NAME", callback=_zone, help="Time zone, e.g. America/Chicago.")
+cover_option = click.option(
+    "--cover", metavar="NAME", callback=_cover, help="Land cover; `daylayer covers` lists them."
+)
 
 
 def stacked(*options: Callable[[F], F]) -> Callable[[F], F]:
@@ -154,7 +184,8 @@ class Outputs:
     """
 
     def __init__(self, *, inputs: Iterable[str] = ()) -> None:
-        self._taken = {self._key(name) for name in inputs}
+        self._inputs = {self._key(name) for name in inputs}
+        self._taken: set[str] = set()
         self._moves: list[tuple[Path, Path]] = []
         self._stdout: str | None = None
 
@@ -173,6 +204,8 @@ class Outputs:
     def path(self, target: str) -> Path:
         """A temporary path with the target's ending, to be written by the caller before the block ends."""
         key = self._key(target)
+        if key in self._inputs:
+            raise click.UsageError(f"'{target}' is an input and would be overwritten; name another file.")
         if key in self._taken:
             raise click.UsageError(f"'{target}' is named twice; every output needs its own file.")
         self._taken.add(key)

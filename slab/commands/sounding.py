@@ -18,6 +18,7 @@ from slab.commands.options import (
     longitude_option,
     picture_option,
     quiet_option,
+    remark,
     units_option,
     valid_option,
 )
@@ -74,6 +75,7 @@ def command(
 
     from forcing.profile import prepare
     from forcing.readers import read_sounding
+    from forcing.remarks import profile_remarks
     from slab.products.sounding import describe
     from slab.products.sounding_text import levels_csv, text
 
@@ -91,4 +93,6 @@ def command(
             draw(document, outputs.path(picture_file), units=units)
         if not quiet and not outputs.on_stdout:
             outputs.text("-", text(document, units=units, levels=levels))
+    for warning in profile_remarks(profile):
+        remark(f"warning: {warning}", quiet=quiet)
     finish([one["text"] for one in document["doubts"]], accept=accept_doubt, quiet=quiet)

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import csv
+import re
 from datetime import UTC, datetime
 
 import numpy as np
@@ -85,10 +86,25 @@ def test_choice_by_time() -> None:
     assert parse(text, "two.txt", valid=datetime(2020, 6, 1, 13, tzinfo=UTC)).nominal == datetime(
         2020, 6, 1, 12, tzinfo=UTC
     )
-    with pytest.raises(ProfileError, match=r"two.txt: no sounding within 3 h of 2020-06-01T06:00Z; there is .*12:00Z"):
+    with pytest.raises(
+        ProfileError, match=r"two.txt: no sounding within 3 h of 2020-06-01T06:00Z; the nearest are .*12:00Z"
+    ):
         parse(text, "two.txt", valid=datetime(2020, 6, 1, 6, tzinfo=UTC))
-    with pytest.raises(ProfileError, match="2 soundings in one file"):
+    with pytest.raises(ProfileError, match=r"2 soundings in one file.*--valid"):
         parse(text, "two.txt")
+
+
+def test_a_time_that_is_not_there_is_answered_with_the_nearest() -> None:
+    text = "".join(record(f"2020 06 {day:02d} 12 1131") for day in range(1, 21))
+    for valid, first in ((datetime(2020, 6, 15, 18, tzinfo=UTC), 15), (datetime(2021, 6, 1, tzinfo=UTC), 20)):
+        with pytest.raises(ProfileError) as caught:
+            parse(text, "many.txt", valid=valid)
+        said = str(caught.value)
+        days = [int(day) for day in re.findall(r"2020-06-(\d\d)T12:00Z", said)]
+        assert len(days) == 6
+        assert days[0] == first
+        assert "and 14 more, from 2020-06-01 to 2020-06-20" in said
+        assert "--valid" in said
 
 
 @pytest.mark.observed
