@@ -22,6 +22,8 @@ COMPILED = os.environ.get("DAYLAYER_COMPILED", "0") == "1"
 
 
 def _source_hash() -> str:
+    import hashlib
+
     digest = hashlib.sha256(sys.version.encode())
     root = Path(__file__).resolve().parent
     for folder in (root, root.parent / "slab"):
