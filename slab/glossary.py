@@ -38,6 +38,7 @@ class Entry(NamedTuple):
 
 _DOWN = "positive downward"
 _UP = "positive upward"
+_INVERTED = "positive warmer above, which is an inversion"
 _PRODUCT = "mixing depth times transport wind"
 
 SERIES: dict[str, Entry] = {
@@ -97,7 +98,31 @@ SERIES: dict[str, Entry] = {
     "inversion_strength_K": Entry(
         "K", "temperature at the inversion top minus that near the ground", "positive warmer aloft", None, "difference"
     ),
-}
+    # the spray calendar's
+    "inversion_state": Entry("", "surface inversion: in every run of the set, possible, in none, or not known"),
+    "inversion_from_m": Entry("m", "base of the surface inversion above ground", "positive upward from the ground"),
+    "delta_t_2m_K": Entry(
+        "K", "dry minus wet bulb temperature at 2 m (thermodynamic wet bulb)", "positive in unsaturated air", None,
+        "difference",
+    ),
+    "temperature_difference_K": Entry(
+        "K", "air temperature at the upper minus that at the lower of two heights", _INVERTED, None, "difference"
+    ),
+    "temperature_difference_per_8m_K": Entry(
+        "K", "the temperature difference scaled to 8 m between the heights", _INVERTED, None, "difference"
+    ),
+    "share_with_inversion": Entry("1", "share of the runs of the set that have an inversion"),
+    "share_inside": Entry("1", "share of the runs of the set inside all given limits and without an inversion"),
+    "status": Entry("", "the hour beside the given limits: inside, outside, unknown, or conditions only"),
+    "hours_since_break_up": Entry("h", "time since the last inversion ended"),
+    "rain_mm_h": Entry("mm h-1", "rain as water depth per time, as given", "", "rainfall_rate"),
+    "deposit": Entry("", "dew or hoar frost on the ground, of the model's own"),
+    "observed_difference_K": Entry(
+        "K", "measured air temperature at the upper minus that at the lower of two heights", _INVERTED, None,
+        "difference",
+    ),
+    "observed_wind_m_s": Entry("m s-1", "measured wind speed at the tower's own height", "", "wind_speed"),
+}  # fmt: skip
 
 _TIME = "UTC"
 SUMMARY: dict[str, Entry] = {

@@ -44,7 +44,7 @@ def plain_document() -> Mapping[str, object]:
 
 def tower(difference: float, *, last: datetime, hours: float = 3.0, wind: float | None = None) -> ObservedTable:
     """Readings every half hour up to ``last`` with one difference [K] between 1.5 and 9 m."""
-    times = last.timestamp() - 1800.0 * np.arange(round(2.0 * hours), -1, -1)
+    times = last.timestamp() - 1800.0 * np.arange(round(2.0 * hours), -1, -1, dtype=np.float64)
 
     def series(value: float) -> Series:
         return Series(times, np.full(times.shape, value), False)

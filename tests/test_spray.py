@@ -36,51 +36,12 @@ from slab.products.spray_limits import (
 )
 from slab.products.spray_members import design
 from slab.products.spray_observed import assimilate, tower_pair
-from slab.products.spray_window import MODEL_TIMING, Night, Window, _window, outward, since_break_up, spells, suns
+from slab.products.spray_window import Night, Window, suns
 
 HOUR = 3600.0
 
 
-def rows(count: int) -> np.ndarray:
-    return 1800.0 * np.arange(count, dtype=float)
-
-
-# windows
-
-
-def test_a_spell_begins_and_ends_where_the_difference_passes_zero() -> None:
-    found = spells(rows(7), np.array([-1.0, -0.5, 0.5, 1.0, 1.0, -1.0, -1.0]))
-    assert [(one.onset, one.end) for one in found] == [(1800.0 * 1.5, 1800.0 * 4.5)]
-
-
-def test_what_is_shorter_than_half_an_hour_does_not_count() -> None:
-    assert spells(rows(5), np.array([-1.0, -1.0, 0.1, -1.0, -1.0])) == []
-    joined = spells(rows(7), np.array([-1.0, 1.0, 1.0, -0.1, 1.0, 1.0, -1.0]))
-    assert len(joined) == 1
-
-
-def test_a_spell_open_at_an_edge_has_no_end_there() -> None:
-    first, last = spells(rows(6), np.array([1.0, 1.0, -1.0, -1.0, 1.0, 1.0]))
-    assert math.isnan(first.onset)
-    assert math.isfinite(first.end)
-    assert math.isfinite(last.onset)
-    assert math.isnan(last.end)
-
-
-def test_a_window_is_wider_than_its_members_and_never_a_single_minute() -> None:
-    same = _window([7200.0] * 9)
-    assert same is not None
-    early, late = outward(same)
-    assert early <= 7200.0 - MODEL_TIMING
-    assert late >= 7200.0 + MODEL_TIMING
-    spread = _window([7200.0 + 600.0 * k for k in range(9)])
-    assert spread is not None
-    assert spread.late - spread.early > same.late - same.early
-    assert early % 1800.0 == late % 1800.0 == 0.0
-    assert _window([math.nan, math.nan]) is None
-    some = _window([7200.0, math.nan])
-    assert some is not None
-    assert some.have == 1
+# members
 
 
 def test_the_members_are_balanced_and_no_two_steps_go_together() -> None:
@@ -91,18 +52,13 @@ def test_the_members_are_balanced_and_no_two_steps_go_together() -> None:
         assert float(table[:, a] @ table[:, b]) == 0.0
 
 
-def test_time_since_the_break_up_counts_from_the_last_end() -> None:
-    since = since_break_up(rows(8), np.array([1.0, 1.0, -1.0, -1.0, -1.0, 1.0, 1.0, 1.0]))
-    assert np.isnan(since[[0, 1, 5, 6, 7]]).all()
-    assert since[4] == pytest.approx((4 - 1.5) * 0.5)
-
-
 # limits
 
 
 def reasons_at(limits: Any, row: int, state: str, **changes: Any) -> list[Reason]:
     made = plain_plan()
-    air = replace(made.air, **{key: np.full(made.air.time.shape, value) for key, value in changes.items()})
+    moved: dict[str, Any] = {key: np.full(made.air.time.shape, value) for key, value in changes.items()}
+    air = replace(made.air, **moved)
     scenario = replace(made.run.scenario, limits=limits)
     sun = suns(scenario.site, float(air.time[0]), float(air.time[-1]))
     return reasons(scenario, air, row, state, sun)
@@ -198,7 +154,8 @@ def test_the_most_limiting_reason_comes_first_and_outside_before_unknown() -> No
 
 
 def test_limits_without_a_number_for_spraying_are_no_limits() -> None:
-    bare = replace(LIMITS, **dict.fromkeys(spray_limits(LIMITS)))
+    nothing: dict[str, Any] = dict.fromkeys(spray_limits(LIMITS))
+    bare = replace(LIMITS, **nothing)
     assert spray_limits(bare) == {}
     assert spray_limits(None) == {}
 

@@ -122,8 +122,5 @@ def _files(
         outputs.text(csv_file, calendar_csv(document))
     if netcdf_file is not None:
         from slab.export import netcdf_bytes
-        from slab.glossary import describe
 
-        # only what the glossary gives a unit: a number without one has no place in a CF file
-        known = {name: values for name, values in document["series"].items() if name == "status" or describe(name)}
-        outputs.path(netcdf_file).write_bytes(netcdf_bytes({**document, "series": known}))
+        outputs.path(netcdf_file).write_bytes(netcdf_bytes(document))

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import asdict, dataclass
 from datetime import UTC, datetime
 from typing import Any
 
@@ -24,7 +24,7 @@ from slab.products.spray_field import RULE, SOURCES, LowField, low_field, what_t
 from slab.products.spray_limits import ORDER, SPRAY_KEYS, spray_limits
 from slab.products.spray_members import Member, members, steps_of
 from slab.products.spray_observed import Reading, Update, reading, tower_pair, update
-from slab.products.spray_window import MODEL_TIMING, Night, Window, nights, outward, suns
+from slab.products.spray_window import TIMING, Night, Window, nights, outward, suns, timing_words
 from slab.spray_cautions import spray_cautions
 
 Array = NDArray[np.float64]
@@ -36,7 +36,8 @@ LEAST, MOST = 0.3, 40.0  # [m] heights that the difference may be taken between
 DEFINITIONS = {
     "inversion": "air at the upper height warmer than at the lower, however little",
     "present / possible / none": "in all nine members / in some, or inside a window of onset or end / in no member",
-    "window": "10 to 90 % of the members, widened by 30 min that the model itself may be off, rounded outward to half hours",
+    "window": "10 to 90 % of the members, widened by what the model itself may be off "
+    f"({timing_words()}), rounded outward to half hours",
     "inside": "inside all limits that you gave, wind known, and no inversion in any member, at begin, middle and end of the hour",
     "Delta-T": "dry minus wet bulb at 2 m; thermodynamic wet bulb, ASHRAE Handbook Fundamentals 2017, chapter 1",
     "weak, moderate, strong": "under 1, under 2.5 and from 2.5 K per 8 m (our choice)",
@@ -258,7 +259,7 @@ def document(made: Plan, *, now: datetime) -> dict[str, Any]:
         },
         "measure": what_to_measure(made.air.between, made.air.boom_height), "observed": _observed(made),
         "spread": {
-            "members": len(made.members), "model_timing_min": MODEL_TIMING / 60.0,
+            "members": len(made.members), "model_timing_min": {key: value / 60.0 for key, value in asdict(TIMING).items()},
             "steps": [{"input": one.name, "step": one.words} for one in steps_of(scenario)],
         },
         "between_m": list(made.air.between), "per_m": PER_METRES, "series": _series(made), "definitions": DEFINITIONS,
