@@ -126,7 +126,8 @@ def _words(file: Any, name: str, dimension: str, words: Sequence[str]) -> None:
 def _describe(file: Any, document: Document) -> None:
     file.Conventions = "CF-1.11"
     file.title = _ascii(f"{document['title']}: base case and changes of ground")
-    file.history = f"written by daylayer {document['run']['version']}"  # without a date, so that a repeat is the same file
+    # without a date, so that a repeat is the same file
+    file.history = f"written by daylayer {document['run']['version']}"
     file.source = "daylayer: mixed layer by day and stable column by night over one ground, base case and changes"
     file.comment = "; ".join(_ascii(item["text"]) for item in document["cautions"])
     keys = ("base", "patch", "threshold_C", "spread", "observed", "not_modelled", "warnings", "run")
