@@ -163,6 +163,9 @@ def test_an_old_profile_is_a_doubt_unless_it_is_an_archive_case(age: float, said
     document = forecast(one, now=moment, with_effects=False)
     assert ("profile_age" in {d["code"] for d in document["doubts"]}) is said
     assert document["profile"]["age_hours"] == pytest.approx(age, abs=0.01)
+    assert document["profile"]["age_at_start_hours"] == 0.0
+    archive = [warning for warning in document["warnings"] if "days old" in warning]
+    assert archive == (["the release is 30 days old: a case from the archive"] if age > 24.0 * 14 else [])
 
 
 def test_a_far_or_high_release_is_a_doubt() -> None:
