@@ -8,7 +8,7 @@ from typing import Any
 
 from slab.wording import Units
 
-__all__ = ["assumed_lines", "change_words", "known_words", "most_telling", "real_warnings"]
+__all__ = ["change_words", "known_words", "most_telling", "real_warnings", "telling_lines", "untold_lines"]
 
 Document = Mapping[str, Any]
 
@@ -36,12 +36,11 @@ def change_words(item: Document, units: Units) -> str:
     return f"{units.restyle(str(item.get('step') or 'one step'))}: {', '.join(changes)}" if changes else ""
 
 
-def assumed_lines(document: Document, units: Units, *, letters: int) -> list[str]:
-    """One text for each assumed input: the most telling first, those of small effect together, those without a step last.
+def telling_lines(document: Document, units: Units, *, letters: int = 0) -> list[str]:
+    """One text for each assumed input with a step: the most telling first, those of small effect together at the end.
 
-    ``letters`` is the width of a line: a reason is left out where it alone would need another line.
+    ``letters`` is the width of a line: a reason is left out where it alone would need another line, and always with 0.
     """
-    assumed = [item for item in document.get("assumptions") or [] if item.get("source") == "assumed"]
     stepped = [item for item in most_telling(document) if item.get("source") == "assumed"]
     small = [item for item in stepped if _is_small(item)]
     lines = [_one(item, units, letters, change_words(item, units)) for item in stepped if item not in small]
@@ -49,7 +48,13 @@ def assumed_lines(document: Document, units: Units, *, letters: int) -> list[str
         limits = f"under {units.height_number(SMALL_M)} {units.height_unit} and {units.difference(SMALL_K)}"
         named = "; ".join(f"{item['name']} {_value(item, units)} ({item.get('step')})" for item in small)
         lines.append(f"small effect, {limits}: {named}")
-    return lines + [_one(item, units, letters, "") for item in assumed if item not in stepped]
+    return lines
+
+
+def untold_lines(document: Document, units: Units, *, letters: int = 0) -> list[str]:
+    """One text for each assumed input for which no step was computed."""
+    items = [item for item in document.get("assumptions") or [] if item.get("source") == "assumed"]
+    return [_one(item, units, letters, "") for item in items if item.get("effect_on_depth_m") is None]
 
 
 def known_words(document: Document, source: str, units: Units) -> str:
@@ -75,7 +80,9 @@ def _one(item: Document, units: Units, letters: int, step: str) -> str:
     start = f"{item['name']}: {_value(item, units)}"
     end = f"; {step}" if step else ""
     why = units.restyle(NOT_GIVEN.sub("", str(item.get("why") or "")).strip())
-    whole = f"{start} ({why}){end}" if why else start + end
+    if not (why and letters):
+        return start + end
+    whole = f"{start} ({why}){end}"
     rows, bare_rows = (-(-len(text) // letters) for text in (whole, start + end))
     return whole if rows == bare_rows else start + end
 

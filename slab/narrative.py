@@ -20,12 +20,12 @@ CONVECTIVE = "the surface temperature at which the morning profile's own air wou
 
 def headline(document: Document, units: Units) -> str:
     """One sentence: greatest depth, warmest and coldest hour with their days, and whether cumulus forms."""
-    summary, clock = document["summary"], Clock.of(document)
+    summary, clock = document["summary"], Clock.of(document, brief=True)
     depth, warmest = summary.get("mixing_depth_max_m"), summary.get("temperature_2m_max_C")
     coldest = summary.get("temperature_2m_min_C")
 
     def at(key: str) -> str:
-        return clock.say(summary.get(key), utc=False, zone=False)
+        return clock.say(summary.get(key))
 
     parts = [
         "Depth of the mixed layer not known"
@@ -37,22 +37,23 @@ def headline(document: Document, units: Units) -> str:
     ]
     when = summary.get("temperature_2m_min_time")
     if coldest is not None and when is not None:
-        parts.append(
-            f"lowest {units.temperature(coldest)} at {clock.say_with_day(when, utc=False).replace(' local', '')}"
-        )
-    return f"{', '.join(parts)}; {cumulus_words(document, units, short=True)}."
+        parts.append(f"lowest {units.temperature(coldest)} at {clock.say_with_day(when)}")
+    return f"{', '.join(parts)}; {cumulus_words(document, units, clock)}."
 
 
-def day_sentences(document: Document, units: Units) -> list[str]:
-    """The day in sentences, most important first; what is missing is said to be not known."""
-    summary, clock = document["summary"], Clock.of(document)
+def day_sentences(document: Document, units: Units, *, brief: bool = False) -> list[str]:
+    """The day in sentences, most important first; what is missing is said to be not known.
+
+    Brief ones have local times alone and explain no terms: beside a picture whose axes have both clocks.
+    """
+    summary, clock = document["summary"], Clock.of(document, brief=brief)
     elevation = document["site"].get("elevation_m")
     sentences = [
         _depth(summary, clock, units, elevation) + _later_days(document, clock, units),
         _temperature(summary, clock, units),
         _breakup(document, clock),
-        _capital(cumulus_words(document, units)) + "." + _convective(summary, units),
-        _wind(document, units),
+        _capital(cumulus_words(document, units, clock)) + "." + _convective(summary, units, brief=brief),
+        _wind(document, units, brief=brief),
         _evening(summary, clock) + evening_depth(document, units),
     ]
     note = summary.get("dry_outflow_note")
@@ -151,15 +152,15 @@ def _breakup(document: Document, clock: Clock) -> str:
     return f"The morning inversion is not seen to break in these hours; {heat}."
 
 
-def cumulus_words(document: Document, units: Units, *, short: bool = False) -> str:
+def cumulus_words(document: Document, units: Units, clock: Clock) -> str:
     """Cumulus onset and base, or "no cumulus", or that it is not known."""
-    summary, clock = document["summary"], Clock.of(document)
+    summary = document["summary"]
     onset = summary.get("cumulus_onset_time")
     if onset is None:
         known = any(value is not None for value in document["series"].get("cumulus_fraction") or [])
         return "no cumulus" if known else "cumulus is not known"
-    when = clock.say(onset, half_hours=True, utc=not short, zone=not short)
-    base = _base(document, units, short=short)
+    when = clock.say(onset, half_hours=True)
+    base = _base(document, units, clock)
     hours = _hours_after(document, clock, onset)
     later = [fraction for _, fraction, _ in hours[1:]]
     if hours and later and max(later) < FEW_CUMULUS and hours[0][1] < SCATTERED:
@@ -181,9 +182,9 @@ def _hours_after(document: Document, clock: Clock, onset: str) -> list[tuple[dat
     return [row for row in rows if row[0] >= begun]
 
 
-def _base(document: Document, units: Units, *, short: bool) -> str:
+def _base(document: Document, units: Units, clock: Clock) -> str:
     """Range of the cloud base over the hours with cumulus."""
-    summary, clock = document["summary"], Clock.of(document)
+    summary = document["summary"]
     first = summary.get("cumulus_base_m")
     hours = _hours_after(document, clock, summary["cumulus_onset_time"])
     known = [level for _, fraction, level in hours if fraction >= CLOUD_SHOWN and level is not None]
@@ -193,7 +194,7 @@ def _base(document: Document, units: Units, *, short: bool) -> str:
     low, high = min(known), max(known)
     low_text = units.height_number(low)
     span = "" if low_text == units.height_number(high) else f"{low_text} to "
-    if short:
+    if clock.brief:
         return f"base {span}{units.height(high)}"
     elevation = document["site"].get("elevation_m")
     if span and elevation is not None and units.name == "us":
@@ -202,9 +203,10 @@ def _base(document: Document, units: Units, *, short: bool) -> str:
     return f"base {span}{units.above_ground(high, elevation)}"
 
 
-def _convective(summary: Document, units: Units) -> str:
+def _convective(summary: Document, units: Units, *, brief: bool) -> str:
     warm = summary.get("convective_temperature_C")
-    return "" if warm is None else f" The convective temperature, {CONVECTIVE}, is {units.temperature(warm)}."
+    meaning = "" if brief else f", {CONVECTIVE},"
+    return "" if warm is None else f" The convective temperature{meaning} is {units.temperature(warm)}."
 
 
 def _direction(document: Document) -> float | None:
@@ -215,7 +217,7 @@ def _direction(document: Document) -> float | None:
     return None if value is None else float(value)
 
 
-def gust_words(document: Document, units: Units) -> str:
+def gust_words(document: Document, units: Units, *, brief: bool = False) -> str:
     """Range of the gusts mixed down, for which hours, and whose winds aloft they are."""
     low, high = (document["summary"].get(f"gust_{which}_m_s") for which in ("low", "high"))
     if low is None or high is None:
@@ -225,19 +227,18 @@ def gust_words(document: Document, units: Units) -> str:
         for item in document.get("assumptions") or []
     )
     aloft = "the winds aloft held from the release" if held else "the winds aloft of the run"
-    return (
-        f"gusts mixed down at any time of the day are {units.speed_number(low)} to {units.speed(high)}, "
-        f"from the layer's mean wind to the strongest reached, by {aloft}"
-    )
+    meaning = "" if brief else "from the layer's mean wind to the strongest reached, "
+    span = f"{units.speed_number(low)} to {units.speed(high)}"
+    return f"gusts mixed down at any time of the day are {span}, {meaning}by {aloft}"
 
 
-def _wind(document: Document, units: Units) -> str:
+def _wind(document: Document, units: Units, *, brief: bool) -> str:
     summary, from_deg = document["summary"], _direction(document)
     speed = summary.get("transport_wind_m_s")
     direction = "" if from_deg is None or speed is None else f" from the {compass(from_deg)}"
     text = (
         f"At the greatest depth the transport wind is {units.speed(speed)}{direction}, "
-        f"ventilation {units.ventilation(summary.get('ventilation_m2_s'))}; {gust_words(document, units)}."
+        f"ventilation {units.ventilation(summary.get('ventilation_m2_s'))}; {gust_words(document, units, brief=brief)}."
     )
     named = summary.get("ventilation_class")
     if named:

@@ -16,10 +16,12 @@ from matplotlib.ticker import MaxNLocator
 from forcing.errors import DaylayerError
 from slab.cautions import complete
 from slab.export import write_atomically
-from slab.narrative import change_words, day_sentences, headline, most_telling
+from slab.inputs_words import known_words, real_warnings, telling_lines, untold_lines
+from slab.narrative import day_sentences, headline
 from slab.pictures_layers import day_layers, draw_layers, hours_from_start
 from slab.pictures_strips import draw_fluxes, draw_profiles, draw_temperature, label_hours
 from slab.pictures_style import LARGE, LINE, PAGE, PLAIN, SMALL, Placer, Ruler
+from slab.pictures_wind import draw_wind
 from slab.pictures_words import balloon_marks, balloon_title, write_words
 from slab.wording import Clock, Units, units_named
 
@@ -32,8 +34,10 @@ ENDINGS = ("png", "svg", "pdf")
 LEFT, RIGHT = 0.058, 0.985  # page edges of what is drawn
 WIDE = 0.635  # width of the panels that share the time axis
 SIDE = 0.735  # left edge of the right column
-HOURS, STRIP, RIBBON, GAP = 0.042, 0.075, 0.105, 0.008  # heights of the hours, the strips and the gaps between
-PROFILES_TO_TEXT = HOURS + 0.012 + RIBBON + STRIP + 2 * GAP - 0.062  # from the lower text up to the cautions
+HOURS, STRIP, WIND, RIBBON, GAP = 0.042, 0.08, 0.084, 0.072, 0.008  # heights of the hours, the strips, the gaps between
+PROFILES_TO_TEXT = HOURS + 0.012 + RIBBON + WIND + STRIP + 3 * GAP - 0.062  # from the lower text up to the cautions
+NO_STEP = "assumed, no step computed"
+MOST_ROWS = 17  # of text in the lower columns
 GUTTER = 1.64 / PAGE[0]  # least blank band left of the first hour, as a part of the page
 
 
@@ -59,19 +63,24 @@ def day(document: Document, *, units: str = "metric") -> Figure:
     half = 0.5 * (WIDE - 0.02)
     left_column = _sentences(document, chosen, ruler, half)
     middle_column = _inputs(document, chosen, ruler, half)
-    rows = max(len(left_column), min(len(middle_column), 20))
+    rows = max(len(left_column), min(len(middle_column), MOST_ROWS))
     right_column = _cautions(document, chosen, ruler)
     below = max(0.022 + rows * LINE, 0.012 + len(right_column) * LINE - PROFILES_TO_TEXT)
+    left_over = _fill(middle_column, untold_lines(document, chosen), rows, half, ruler)
+    right_column += _cut(
+        _known(document, left_over, chosen, ruler), int((below + PROFILES_TO_TEXT - 0.012) / LINE) - len(right_column)
+    )
     axes = _panels(figure, top, below)
     length = float(hours_from_start(document, document["series"]["time"][-1])) or 1.0
     gutter = length * (band := _band(document, chosen, ruler)) / (WIDE - band)
-    for panel in axes[:3]:
+    layers, temperature, fluxes, theta, water, wind = axes
+    for panel in (layers, temperature, wind, fluxes):
         panel.set_xlim(-gutter, length)
-    layers, temperature, fluxes, theta, water = axes
     shapes = day_layers(document)
     draw_layers(layers, shapes, document, chosen)
     write_words(layers, shapes, document, chosen, placer)
     draw_temperature(temperature, document, chosen, placer)
+    draw_wind(wind, document, chosen, placer)
     draw_fluxes(fluxes, document, placer)
     _finish(figure, axes, document, chosen, length)
     theta.set_ylim(layers.get_ylim())
@@ -151,9 +160,10 @@ def _band(document: Document, units: Units, ruler: Ruler) -> float:
 
 
 def _panels(figure: Figure, top: float, below: float) -> list[Axes]:
-    """Layers, temperature and fluxes under one another; two profiles beside the layers, on the same heights."""
+    """Layers, temperature, wind and fluxes under one another; two profiles beside the layers, on the same heights."""
     ribbon_y = below + HOURS + 0.012
-    strip_y = ribbon_y + RIBBON + GAP
+    wind_y = ribbon_y + RIBBON + GAP
+    strip_y = wind_y + WIND + GAP
     layers_y = strip_y + STRIP + GAP
     height = top - HOURS - 0.004 - layers_y
     narrow = 0.5 * (RIGHT - SIDE - 0.012)
@@ -163,20 +173,22 @@ def _panels(figure: Figure, top: float, below: float) -> list[Axes]:
         (LEFT, ribbon_y, WIDE, RIBBON),
         (SIDE, layers_y, narrow, height),
         (SIDE + narrow + 0.012, layers_y, narrow, height),
+        (LEFT, wind_y, WIDE, WIND),
     ]
     return [figure.add_axes(box) for box in boxes]
 
 
 def _finish(figure: Figure, axes: list[Axes], document: Document, units: Units, length: float) -> None:
-    layers, temperature, fluxes, theta, water = axes
+    layers, temperature, fluxes, theta, water, wind = axes
     layers.set_ylabel(f"height above ground, {units.height_unit}", fontsize=PLAIN, labelpad=3)
-    for panel in (layers, temperature, fluxes):
+    for panel in (layers, temperature, wind, fluxes):
         panel.tick_params(labelsize=SMALL, length=3, pad=2)
         for edge in ("top", "right"):
             panel.spines[edge].set_visible(False)
     for panel in (temperature, fluxes):
         panel.yaxis.set_major_locator(MaxNLocator(nbins=4, prune="both"))
-    temperature.xaxis.set_ticks([])
+    for panel in (temperature, wind):
+        panel.xaxis.set_ticks([])
     label_hours(layers, document, length, local=True)
     label_hours(fluxes, document, length, local=False)
     for panel in (theta, water):
@@ -188,42 +200,53 @@ def _finish(figure: Figure, axes: list[Axes], document: Document, units: Units, 
 
 def _sentences(document: Document, units: Units, ruler: Ruler, width: float) -> Lines:
     lines: Lines = [("the day", True)]
-    for sentence in day_sentences(document, units):
+    for sentence in day_sentences(document, units, brief=True):
         lines += [(line, False) for line in ruler.wrap(sentence, width, indent="   ")]
     return lines
 
 
 def _inputs(document: Document, units: Units, ruler: Ruler, width: float) -> Lines:
-    """Doubts and warnings first, then what was assumed with what a step in it changes, then what was given."""
+    """Doubts and warnings first, then what was assumed with what a step in it changes."""
     lines: Lines = []
-    doubts = [item["text"] for item in document.get("doubts") or []]
-    for heading, items in (("doubts", doubts), ("warnings", document.get("warnings") or [])):
+    said = [
+        ("doubts", [units.restyle(item["text"]) for item in document.get("doubts") or []]),
+        ("warnings", [units.restyle(text) for text in real_warnings(document)]),
+        ("assumed; a step: change of greatest depth, highest temperature", telling_lines(document, units)),
+    ]
+    for heading, items in said:
         if items:
             lines.append((heading, True))
             lines += [(line, False) for item in items for line in ruler.wrap(item, width, indent="   ")]
-    assumed = [item for item in document.get("assumptions") or [] if item.get("source") == "assumed"]
-    if assumed:
-        lines.append(("assumed (a step: change of greatest depth, highest temperature)", True))
-        telling = [item for item in most_telling(document) if item in assumed]
-        words = [f"{item['name']} {item['value']} ({change_words(item, units)})" for item in telling]
-        rest = [str(item["name"]) for item in assumed if item not in telling]
-        words += [f"no step computed: {', '.join(rest)}"] if rest else []
-        lines += [(line, False) for text in words for line in ruler.wrap(text, width, indent="   ")]
-    for source in ("given", "observed"):
-        known = [
-            f"{item['name']} {item['value']}"
-            for item in document.get("assumptions") or []
-            if item.get("source") == source
-        ]
-        if known:
-            lines.append((source, True))
-            lines += [(line, False) for line in ruler.wrap("; ".join(known), width, indent="   ")]
+    return lines
+
+
+def _fill(lines: Lines, items: list[str], rows: int, width: float, ruler: Ruler) -> list[str]:
+    """Add inputs without a step under a column while they fit; returns those that do not."""
+    lines_of = [[(line, False) for line in ruler.wrap(item, width, indent="   ")] for item in items]
+    if items and len(lines) + 1 + len(lines_of[0]) <= rows:
+        lines.append((NO_STEP, True))
+        while items and len(lines) + len(lines_of[0]) <= rows:
+            lines += lines_of.pop(0)
+            items = items[1:]
+    return items
+
+
+def _known(document: Document, untold: list[str], units: Units, ruler: Ruler) -> Lines:
+    """Inputs given and observed, and those assumed without a step that found no room; they stand under the cautions."""
+    lines: Lines = []
+    said = [(source, [known_words(document, source, units)]) for source in ("given", "observed")]
+    for heading, items in (*said, (NO_STEP, untold)):
+        if any(items):
+            lines.append((heading, True))
+            lines += [(line, False) for item in items for line in ruler.wrap(item, RIGHT - SIDE, indent="   ")]
     return lines
 
 
 def _cut(lines: Lines, rows: int) -> Lines:
     if len(lines) <= rows:
         return lines
+    if rows < 1:
+        return []
     return [*lines[: rows - 1], (f"and {len(lines) - rows + 1} more lines in the text output", True)]
 
 

@@ -13,7 +13,7 @@ from matplotlib.axes import Axes
 from matplotlib.patches import Polygon
 
 from slab.pictures_style import LAYERS
-from slab.wording import Units
+from slab.wording import CLOUD_SHOWN, Units
 
 Document = Mapping[str, Any]
 Array = np.ndarray[Any, np.dtype[np.float64]]
@@ -68,7 +68,7 @@ def day_layers(document: Document) -> DayLayers:
     residual = np.where((known == 0.0) & beside, np.nan_to_num(mixed), known)
     part = np.nan_to_num(column(document, "cumulus_fraction"))
     level = column(document, "condensation_level_m")
-    cloudy = (part > 0.0) & ~np.isnan(depth)
+    cloudy = (part >= CLOUD_SHOWN) & ~np.isnan(depth)
     return DayLayers(
         hours=hours_from_start(document, document["series"]["time"]),
         mixed=mixed,

@@ -30,9 +30,9 @@ def draw_temperature(axes: Axes, document: Document, units: Units, placer: Place
         low, high = float(known.min()), float(known.max())
         room = max(high - low, 2.0)
         axes.set_ylim(low - 0.3 * room, high + 0.4 * room)
-    _gutter_words(
+    gutter_words(
         axes,
-        f"at 2 m, {units.temperature_unit}",
+        f"at {units.length(2.0)}, {units.temperature_unit}",
         [("temperature", "#8c2d04", None), ("dew point", "#08519c", (4, 1.5))],
         placer,
     )
@@ -41,17 +41,16 @@ def draw_temperature(axes: Axes, document: Document, units: Units, placer: Place
         value, when = summary.get(f"temperature_2m_{which}_C"), summary.get(f"temperature_2m_{which}_time")
         if value is not None and when is not None:
             at = float(hours_from_start(document, when))
-            _figure_at(axes, at, units.temperature_value(value), units, lift, placer)
+            _figure_at(axes, at, units.temperature_value(value), units.temperature_number(value), lift, placer)
 
 
 def _display(values: Array, units: Units) -> Array:
     return np.array([units.temperature_value(value) for value in values])
 
 
-def _figure_at(axes: Axes, hour: float, value: float, units: Units, lift: float, placer: Placer) -> None:
+def _figure_at(axes: Axes, hour: float, value: float, words: str, lift: float, placer: Placer) -> None:
     low, high = axes.get_ylim()
     step = (high - low) * 0.17 * lift
-    words = f"{value:.1f}" if units.name == "metric" else f"{value:.0f}"
     near = 0.015 * axes.get_xlim()[1]
     shifts = [near * n for n in (0.0, 1.0, -1.0, 2.0, -2.0) if hour + near * n >= near]
     places = [(hour + shift, value + part * step) for part in (1.0, 0.8, -1.0) for shift in shifts]
@@ -88,14 +87,16 @@ def draw_fluxes(axes: Axes, document: Document, placer: Placer) -> None:
         *([] if np.all(np.isnan(net)) else [("net radiation (down)", "black", (3, 1.2))]),
         *((name, FLUXES[name], None) for name in reversed(parts) if not np.all(np.isnan(parts[name]))),
     ]
-    _gutter_words(axes, "W/m², away from the surface", keys, placer, wide=True)
+    gutter_words(axes, "W/m², away from the surface", keys, placer, wide=True)
 
 
-def _gutter_words(axes: Axes, unit: str, keys: Sequence[Key], placer: Placer, *, wide: bool = False) -> None:
-    """Names of the lines, with a piece of each, in the blank band left of the first hour."""
+def gutter_words(
+    axes: Axes, unit: str, keys: Sequence[Key], placer: Placer, *, wide: bool = False, rows: int | None = None
+) -> None:
+    """Names of the lines, with a piece of each, in the blank band left of the first hour; ``rows`` of it in all."""
     style: dict[str, Any] = {"transform": axes.transAxes, "fontsize": SMALL, "ha": "left"}
     placer.reserve(axes.text(0.006, 0.97, unit, va="top", fontweight="bold", **style))
-    rows = len(keys) + 1
+    rows = rows or len(keys) + 1
     for n, (words, colour, dash) in enumerate(keys, start=1):
         y = 1.0 - (n + 0.5) / rows
         width = 6.0 if wide and dash is None else 1.6
@@ -123,10 +124,15 @@ def hour_marks(start: datetime, length: float, zone: tzinfo, every: int) -> Iter
         moment += timedelta(minutes=15)
 
 
+def hours_apart(length: float) -> int:
+    """Hours between the marks of a time axis of so many hours."""
+    return 1 if length <= 8 else 2 if length <= 16 else 3 if length <= 40 else 6
+
+
 def label_hours(axes: Axes, document: Document, length: float, *, local: bool) -> None:
     """Hours along one edge: local on top, UTC at the bottom, the date at the first mark and after midnight."""
     clock = Clock.of(document)
-    every = 1 if length <= 8 else 2 if length <= 16 else 3 if length <= 40 else 6
+    every = hours_apart(length)
     marks = list(hour_marks(clock.start, length, clock.zone if local else UTC, every))
     axes.xaxis.set_ticks([mark for mark, _ in marks], [_hour_words(n, marks) for n in range(len(marks))])
     axes.xaxis.set_ticks_position("top" if local else "bottom")
@@ -172,9 +178,7 @@ def draw_profiles(theta: Axes, water: Axes, document: Document, units: Units) ->
             values = np.array([math.nan if x is None else float(x) for x in profile[key]])
             moment = clock.local(datetime.fromisoformat(profile["valid"]))
             dashes: dict[str, Any] = {"dashes": dash} if dash else {}
-            (line,) = axes.plot(
-                values, height, color=colour, linewidth=1.6, label=f"{when} {moment:%H:%M} local", **dashes
-            )
+            (line,) = axes.plot(values, height, color=colour, linewidth=1.6, label=f"profile {moment:%H:%M}", **dashes)
             lines += [line] if axes is theta else []
             inside = values[(height <= top) & ~np.isnan(values)]
             seen += [float(x) for x in inside]

@@ -16,7 +16,7 @@ from slab.pictures_style import INK, LAYERS, NAME, PAGE, SMALL, Placer, halo, sp
 from slab.wording import Clock, Units
 
 Document = Mapping[str, Any]
-BAND_LETTERS = 24  # of a line of words in the band left of the first hour
+BAND_LETTERS = 26  # of a line of words in the band left of the first hour
 PAPER = {"facecolor": "white", "edgecolor": "none", "pad": 0.7, "alpha": 0.88}
 
 
@@ -171,8 +171,11 @@ def _names(axes: Axes, layers: DayLayers, scale: float, placer: Placer) -> None:
         _over(axes, "wind-mixed below the dashes", layers.hours, layers.night_mixing * scale, ground, placer)
     _name(axes, "mixed layer", layers, zero, mixed * scale, placer)
     _name(axes, "residual layer", layers, night * scale, layers.residual * scale, placer)
-    _name(axes, "free air", layers, ceiling * scale, (zero + top) * scale, placer)
-    cloudy = np.where(layers.cloud_part > 0.0, layers.cloud_top, np.nan)
+    # before the first day nothing says how far up yesterday's air reaches: that air has another name
+    untold = (mixed == 0.0) & (layers.residual == 0.0)
+    _name(axes, "free air", layers, np.where(untold, top, ceiling) * scale, (zero + top) * scale, placer)
+    _name(axes, "air above", layers, np.where(untold, ceiling, top) * scale, (zero + top) * scale, placer)
+    cloudy = layers.cloud_top
     _over(axes, "cumulus", layers.hours, cloudy * scale, "free air", placer, size=NAME, first=layers.cloud_part)
     _over(axes, "condensation level", layers.hours, layers.condensation * scale, "cloud", placer)
     if np.any(layers.missing):
@@ -218,7 +221,8 @@ def _name(axes: Axes, name: str, layers: DayLayers, low: Array, high: Array, pla
     inside = [(layers.hours[n], low[n] + part * thick[n]) for part in (0.5, 0.4, 0.6, 0.3, 0.7, 0.2, 0.8) for n in deep]
     above = [(layers.hours[n], high[n] + lift * gap) for lift in (0.9, 1.3, 2.0) for n in order]
     style: dict[str, Any] = {"fontsize": NAME, "ha": "center", "va": "center", "zorder": 6}
-    style |= {"color": INK[name], "path_effects": halo(LAYERS[name], 2.5)}
+    fill = name if name in LAYERS else "free air"
+    style |= {"color": INK[fill], "path_effects": halo(LAYERS[fill], 2.5)}
     for places in (inside, above):
         if placer.place(axes, name, places, **style) is not None:
             return

@@ -139,7 +139,7 @@ def tables_depth(profile: Profile, *, step: float = GRID, exponent: float = KAPP
     if over.size == 0:
         return Top(name, nan, f"no air 0.5 K warmer below the profile's end at {profile.height[-1]:.0f} m")
     height = float(z[lowest + int(over[0])])
-    return Top(name, height, f"minimum {virtual[lowest]:.2f} K at {z[lowest]:.0f} m")
+    return Top(name, height, f"virtual potential temperature, minimum {virtual[lowest]:.2f} K at {z[lowest]:.0f} m")
 
 
 def parcel(profile: Profile, *, excess: float = 0.0, surface_virtual_theta: float | None = None) -> Top:
@@ -161,7 +161,7 @@ def parcel(profile: Profile, *, excess: float = 0.0, surface_virtual_theta: floa
         return Top(name, nan, f"still buoyant at the profile's end ({profile.height[-1]:.0f} m)")
     if height == 0.0:
         return Top(name, 0.0, "the air is warmer than the parcel from the ground up")
-    return Top(name, height, f"starts at {start:.2f} K")
+    return Top(name, height, f"starts at a virtual potential temperature of {start:.2f} K")
 
 
 def adiabat(profile: Profile, *, surface_temperature: float, excess: float = 0.0) -> Top:
@@ -175,7 +175,7 @@ def adiabat(profile: Profile, *, surface_temperature: float, excess: float = 0.0
     height = _first_above(profile.height, profile.theta, np.zeros_like(profile.theta), start)
     if not isfinite(height):
         return Top(name, nan, f"still buoyant at the profile's end ({profile.height[-1]:.0f} m)")
-    return Top(name, height, f"adiabat of {start:.2f} K")
+    return Top(name, height, f"adiabat of potential temperature {start:.2f} K")
 
 
 def _steepest(z: Array, values: Array, sign: float) -> tuple[float, float]:

@@ -208,17 +208,17 @@ def compass(degrees: float) -> str:
 
 @dataclass(frozen=True, slots=True)
 class Clock:
-    """Says the hours of one result in local time and UTC."""
+    """Says the hours of one result in local time and UTC; a brief one in local time alone, without the word."""
 
     zone: ZoneInfo
     start: datetime
+    brief: bool = False
 
     @classmethod
-    def of(cls, document: Document) -> Clock:
+    def of(cls, document: Document, *, brief: bool = False) -> Clock:
         """Clock of a document: its site's zone and its first hour."""
-        return cls(
-            ZoneInfo(document["site"].get("time_zone") or "UTC"), datetime.fromisoformat(document["series"]["time"][0])
-        )
+        zone = ZoneInfo(document["site"].get("time_zone") or "UTC")
+        return cls(zone, datetime.fromisoformat(document["series"]["time"][0]), brief)
 
     def local(self, moment: datetime) -> datetime:
         """Local time of an aware time."""
@@ -243,8 +243,8 @@ class Clock:
         text = f"{local:%H:%M}"
         if local.date() != self.local(self.start).date():
             text += f" on {local:%a} {local.day} {local:%b}"
-        text += " local" if zone else ""
-        return f"{text} ({moment:%H:%M} UTC)" if utc else text
+        text += " local" if zone and not self.brief else ""
+        return f"{text} ({moment:%H:%M} UTC)" if utc and not self.brief else text
 
     def day_word(self, iso: str) -> str:
         """``this morning``, ``this afternoon``, ``tonight``, ``tomorrow morning``, counted from the first row's day."""
@@ -257,13 +257,12 @@ class Clock:
             return f"this {part}"
         return f"tomorrow {part}" if days == 1 else f"in the {part} of day {days + 1}"
 
-    def say_with_day(self, iso: str | None, *, utc: bool = True) -> str:
+    def say_with_day(self, iso: str | None) -> str:
         """``05:30 local tomorrow morning, Wed 15 Jul (11:30 UTC)``; the date only where it is not the first day's."""
         if iso is None:
             return UNKNOWN
         moment = datetime.fromisoformat(iso).astimezone(UTC)
         local = self.local(moment)
-        other = local.date() != self.local(self.start).date()
-        dated = f", {local:%a} {local.day} {local:%b}" if other else ""
-        tail = f" ({moment:%H:%M} UTC)" if utc else ""
-        return f"{local:%H:%M} local {self.day_word(iso)}{dated}{tail}"
+        zone, tail = ("", "") if self.brief else (" local", f" ({moment:%H:%M} UTC)")
+        dated = f", {local:%a} {local.day} {local:%b}" if local.date() != self.local(self.start).date() else ""
+        return f"{local:%H:%M}{zone} {self.day_word(iso)}{dated}{tail}"

@@ -25,7 +25,9 @@ from slab import pictures
 from slab.pictures_layers import day_layers
 from slab.pictures_strips import hour_marks
 from slab.pictures_style import FLUXES, LAYERS, canvas_of, lightness, spread
+from slab.wording import METRIC
 
+WINDS = ("transport wind", "wind near the ground")
 FORBIDDEN = re.compile(r"\b(safe|legal|permitted|ok|approved|go|green light)\b", re.IGNORECASE)
 
 PAGES = [*((case, "metric") for case in CASES), ("plain", "us"), ("no cumulus", "us"), ("southern winter", "us")]
@@ -136,7 +138,7 @@ def test_lines_differ_in_dash_as_well_as_in_colour() -> None:
 
 
 def test_profiles_share_the_height_axis_of_the_layers() -> None:
-    layers, _, _, theta, water = page("plain").axes
+    layers, _, _, theta, water, _ = page("plain").axes
     assert theta.get_ylim() == layers.get_ylim() == water.get_ylim()
     assert theta.get_position().y0 == layers.get_position().y0
 
@@ -146,6 +148,29 @@ def test_clouds_are_drawn_only_where_there_are_some() -> None:
     document = sample()
     assert len(clouds) == sum(1 for part in document["series"]["cumulus_fraction"] if part > 0)
     assert not page("no cumulus").axes[0].patches
+
+
+def test_wind_ventilation_and_gusts_stand_on_the_page() -> None:
+    wind = page("plain").axes[5]
+    transport, near = (next(line for line in wind.lines if line.get_label() == name) for name in WINDS)
+    document = sample()
+    assert list(np.asarray(transport.get_ydata(), float)) == document["series"]["transport_wind_m_s"]
+    assert near.is_dashed() != transport.is_dashed()
+    words = {text.get_text() for text in words_on(page("plain"))}
+    assert "wind, m/s, gusts 7.5 to 12.0" in words
+    at_noon = document["series"]["ventilation_m2_s"][7]
+    assert METRIC.ventilation_number(at_noon) in words
+
+
+def test_profiles_are_named_by_their_hours() -> None:
+    words = {text.get_text() for text in words_on(page("plain"))}
+    assert {"profile 05:05", "profile 15:00"} <= words
+
+
+def test_small_parts_of_cloud_are_not_drawn() -> None:
+    document = sample()
+    document["series"]["cumulus_fraction"] = [0.009, 0.01] + [0.0] * 35
+    assert list(np.flatnonzero(~np.isnan(day_layers(document).cloud_base))) == [1]
 
 
 def test_missing_hours_stay_empty_and_are_said_to_be() -> None:

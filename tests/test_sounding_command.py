@@ -101,7 +101,7 @@ def test_csv_can_be_read_again(morning: str, tmp_path: Path) -> None:
 def test_us_units_are_feet_knots_and_fahrenheit(morning: str) -> None:
     result = run("sounding", morning, *MOMENT, *PLACE, "--units", "us", "--no-levels")
     assert re.search(r"reaches \d+ ft above ground", result.stdout)
-    assert " F at the ground" in result.stdout
+    assert " °F at the ground" in result.stdout
     assert not re.search(r"\d m\b(?!\s*[sgW-])", result.stdout.split("where the top")[0])
 
 

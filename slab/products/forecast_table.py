@@ -113,7 +113,7 @@ def _stretches(document: Document) -> list[_Stretch]:
     for n, (light, rows) in enumerate(groups):
         opening = clock.local(moments[rows[0]])
         days = (opening.date() - first).days
-        if not light and opening.hour < 12 and days > 0:
+        if not light and opening.hour < 12:
             days -= 1  # the small hours belong to the evening before
         found.append(_Stretch(_named(light, days), not light, rows, edges[n], edges[n + 1], n == len(groups) - 1))
     return found
@@ -131,6 +131,8 @@ def _edge(row: datetime, light: bool, sun: Document, clock: Clock) -> datetime:
 def _named(light: bool, days: int) -> str:
     if light:
         return "today" if days == 0 else "tomorrow" if days == 1 else f"day {days + 1}"
+    if days < 0:
+        return "before sunrise"
     return "tonight" if days == 0 else "tomorrow night" if days == 1 else f"night {days + 1}"
 
 
@@ -205,7 +207,7 @@ def _depths(document: Document, series: Document, clock: Clock, *, night: bool) 
     limit = 500.0 * max(1.0, US.height_value(high) // 1000.0)
     deep = [time for depth, time in known if US.height_value(depth) > limit]
     lines = [f"{_heights(high, high, elevation)}, at {_hour(when, clock)}"]
-    if len(deep) > 1:
+    if len(deep) > 1 and not night:
         lines.append(f"over {limit:.0f} ft above ground from {_hour(deep[0], clock)} to {_hour(deep[-1], clock)}")
     return lines
 

@@ -8,7 +8,7 @@ from datetime import datetime
 from typing import Any
 
 from slab.cautions import complete
-from slab.inputs_words import assumed_lines, known_words, real_warnings
+from slab.inputs_words import known_words, real_warnings, telling_lines, untold_lines
 from slab.narrative import day_sentences, headline
 from slab.products.forecast_table import METHODS, blocks, hourly_table, roughness_of
 from slab.products.series import RICHARDSON, SLAB_TOP, STRESS
@@ -79,7 +79,7 @@ def _sun(document: Document, clock: Clock) -> str:
     rise, fall = sun.get("sunrise"), sun.get("sunset")
     if not (rise and fall):
         return ""
-    return f"; sunrise {clock.say(rise, utc=False, zone=False)}, sunset {clock.say(fall, utc=False, zone=False)}"
+    return f"; sunrise {clock.say(rise, utc=False)}, sunset {clock.say(fall, utc=False)}"
 
 
 def _place(site: Document) -> str:
@@ -134,7 +134,8 @@ def _doubts(document: Document, units: Units) -> list[str]:
 
 def _assumptions(document: Document, units: Units) -> list[str]:
     """Inputs by source; beside an assumed one the change that a plausible step in it makes."""
-    assumed = assumed_lines(document, units, letters=WIDTH - 2)
+    letters = WIDTH - 2
+    assumed = telling_lines(document, units, letters=letters) + untold_lines(document, units, letters=letters)
     lines = [
         "assumed, most telling first; then a plausible step: change of the greatest depth, of the highest temperature"
     ]

@@ -38,7 +38,7 @@ from numpy.typing import NDArray
 from forcing.air import ZERO_CELSIUS, each, relative_humidity
 from forcing.profile import precipitable_water
 from forcing.sounding import Profile
-from forcing.units import METRIC, Style
+from forcing.units import FOOT_M, METRIC, Style
 from slab.heat import CloudLevels, cloud_levels, heat_to_break
 from slab.inversions import RULES, Inversion, superadiabatic_layer, surface_inversions
 from slab.tops import CRITICAL_RICHARDSON, EXPLANATIONS, TABLES_RISE, Top, all_tops
@@ -164,12 +164,17 @@ def cautions(document: Document, style: Style) -> list[dict[str, str]]:
 
 
 _METRES = re.compile(r"(\d+(?:\.\d+)?) (k?m)\b(?!/)")
+_GRADIENT = re.compile(r"(-?\d+(?:\.\d+)?) (K|g/kg) per 100 m\b")
 
 
 def restyle(words: str, style: Style) -> str:
-    """Words of a detail or an explanation with their heights in the style's unit; metric ones stay as they are."""
+    """Words of a detail or an explanation with their heights in the style's unit; metric ones stay as they are.
+
+    Gradients are told per 100 ft; potential temperatures and the thresholds on them stay in K.
+    """
     if style.length == "m":
         return words
+    words = _GRADIENT.sub(lambda found: f"{float(found[1]) * FOOT_M:.2g} {found[2]} per 100 ft", words)
     return _METRES.sub(lambda found: style.height(float(found[1]) * (1000.0 if found[2] == "km" else 1.0)), words)
 
 
@@ -191,8 +196,7 @@ def sentence(document: Document, style: Style) -> str:
     if depth is None:
         mixed = "no top is found below the profile's end"
     else:
-        half = style.difference(TABLES_RISE)
-        mixed = f"virtual potential temperature is {half} over its minimum at {style.height(depth)}"
+        mixed = f"virtual potential temperature is {TABLES_RISE:g} K over its minimum at {style.height(depth)}"
     return f"At {when}{where} {state}; {mixed}."
 
 

@@ -9,7 +9,7 @@ from datetime import datetime, timedelta
 from textwrap import wrap
 from typing import Any
 
-from forcing.units import STYLES, ZERO_CELSIUS_K, Style
+from forcing.units import STYLES, UNIT_TEXT, ZERO_CELSIUS_K, Style
 from slab.products.sounding import cautions, restyle, sentence
 
 Document = dict[str, Any]
@@ -171,8 +171,8 @@ def _levels(document: Document, style: Style) -> list[str]:
     ]
     header = ("above", "above", "pressure", "air", "dew", "potential", "mixing", "wind", "from")
     second = ("ground", "sea", "", "", "point", "temperature", "ratio", "", "")
-    speed = "m/s" if style.speed == "m_s" else style.speed
-    units = (style.length, style.length, "hPa", style.temperature, style.temperature, "K", "g/kg", speed, "deg")
+    speed, warmth = UNIT_TEXT[style.speed], UNIT_TEXT[style.temperature]
+    units = (style.length, style.length, "hPa", warmth, warmth, "K", "g/kg", speed, "deg")
     return ["levels", *table(header, second, [units, *rows])]
 
 
