@@ -10,6 +10,8 @@ from forcing.series import suggestion
 
 #: What a bare command runs.
 DEFAULT = "summer_plain"
+#: What the name of a file that ships with the package starts with where a scenario names it.
+PREFIX = "bundled:"
 
 
 def folder() -> Path:
@@ -27,6 +29,29 @@ def folder() -> Path:
         if any(place.glob("*.toml")):
             return place
     raise ScenarioError("the bundled scenarios are not installed", remedy="install the package again")
+
+
+def located(name: str, beside: Path) -> Path:
+    """Path of a file that a scenario names: ``bundled:NAME`` ships with the package, others are taken from ``beside``.
+
+    Raises
+    ------
+    ScenarioError
+        If no file of that name is bundled.
+    """
+    if not name.startswith(PREFIX):
+        return beside / Path(name).expanduser()
+    wanted = name.removeprefix(PREFIX).strip()
+    known = sorted(path.name for path in folder().iterdir() if path.suffix in (".csv", ".txt"))
+    if wanted not in known:
+        raise ScenarioError(f"no bundled file '{wanted}'", remedy=suggestion(wanted, known))
+    return folder() / wanted
+
+
+def bundled_as(path: str | Path) -> str | None:
+    """Name of a file among the bundled ones, None where it is not one of them."""
+    file = Path(path)
+    return file.name if file.is_file() and file.resolve().parent == folder().resolve() else None
 
 
 def bundled_names() -> tuple[str, ...]:

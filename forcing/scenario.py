@@ -13,8 +13,9 @@ from pathlib import Path
 from typing import Any
 
 from forcing.assumptions import list_assumptions
-from forcing.bundled import bundled, bundled_names
+from forcing.bundled import bundled, bundled_names, located
 from forcing.errors import ScenarioError
+from forcing.named_files import FILE_KEYS, given_names, kept_names
 from forcing.scenario_parts import (
     Parts,
     read_cover,
@@ -151,6 +152,7 @@ def build(settings: Settings, *, folder: Path, source: str, text: str = "", part
         later_original=profiles.later_original,
         rebase=profiles.rebase,
         settings=_absolute(settings, sections, folder),
+        file_names=given_names(settings),
     )
     _check_span(scenario)
     return replace(scenario, assumptions=list_assumptions(scenario))
@@ -163,10 +165,10 @@ def _absolute(settings: Settings, sections: Mapping[str, Section], folder: Path)
             key: value.isoformat() if isinstance(value, date) else value  # a datetime is a date too
             for key, value in section.values.items()
         }
-        for key in ("file", "later", "fluxes"):
+        for key in (key for part, key in FILE_KEYS if part == name):
             value = values.get(key)
             if isinstance(value, str):
-                values[key] = str((folder / Path(value.strip()).expanduser()).resolve())
+                values[key] = str(located(value.strip(), folder).resolve())
         if values:
             out[name] = values
     out |= {name: settings[name] for name in FREE_TABLES if settings.get(name)}
@@ -219,7 +221,8 @@ def with_value(settings: Settings, section: str, key: str, value: object) -> dic
 
 def _rebuilt(scenario: Scenario, settings: Settings) -> Scenario:
     parts = Parts.of(scenario)
-    return build(settings, folder=Path(), source=scenario.source, text=scenario.text, parts=parts)
+    again = build(settings, folder=Path(), source=scenario.source, text=scenario.text, parts=parts)
+    return replace(again, file_names=kept_names(again, scenario))
 
 
 _NEEDED_FLAGS = {
@@ -291,7 +294,8 @@ def from_flags(
         }
     )
     when = check_layout({**settings, "site": {}}, FLAGS_SOURCE)["profile"].time("valid")
-    sounding = read_sounding(Path(profile), valid=when)
+    file = located(str(profile), Path())
+    sounding = read_sounding(file, valid=when)
     told = {
         "latitude": sounding.latitude if latitude is None else latitude,
         "longitude": sounding.longitude if longitude is None else longitude,
@@ -307,6 +311,6 @@ def from_flags(
             remedy="add " + ", ".join(lacking),
         )
     place = {"latitude": latitude, "longitude": longitude, "elevation": elevation, "time_zone": zone}
-    settings |= _settings_of_flags({"site": {"name": sounding.station or Path(profile).stem, **place}})
-    settings["title"] = title or f"From {Path(profile).name}"
+    settings |= _settings_of_flags({"site": {"name": sounding.station or file.stem, **place}})
+    settings["title"] = title or f"From {file.name}"
     return build(settings, folder=Path(), source=FLAGS_SOURCE)

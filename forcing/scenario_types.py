@@ -120,6 +120,8 @@ class Scenario:
         0 wilting point to 1 field capacity.
     settings : mapping
         The scenario as plain values, to write out or to change and build again.
+    file_names : mapping
+        Dotted key of every file to its name as it was given, for what is shown instead of a path on this machine.
     """
 
     title: str
@@ -139,6 +141,7 @@ class Scenario:
     later_original: Profile | None = None
     rebase: str = ""
     settings: Settings = field(default_factory=dict)
+    file_names: Mapping[str, str] = field(default_factory=dict)
 
     @property
     def start(self) -> float:

@@ -11,6 +11,7 @@ import os
 from collections.abc import Iterator, Mapping
 from pathlib import Path
 
+from forcing.bundled import PREFIX, bundled_as
 from forcing.keys import KEYS
 from forcing.scenario_parts import DEFAULT_COVER, DEFAULT_REBASE, DEFAULT_SOIL_MOISTURE, PLACE_KEYS
 from forcing.scenario_types import Assumption, RunOptions, Scenario
@@ -39,7 +40,8 @@ def write_toml(scenario: Scenario, *, beside: str | Path | None = None) -> str:
     Parameters
     ----------
     beside : path, optional
-        File that the text will be written to; file names in it are relative to its folder. Absolute when left out.
+        File that the text will be written to; file names in it are relative to its folder. Absolute when left out. A file
+        that ships with the package is named as such, unless it lies in that folder or below.
 
     Returns
     -------
@@ -91,7 +93,12 @@ def _line(key: str, value: str, meaning: str) -> Iterator[str]:
 
 
 def _written(key: str, value: object, folder: Path | None) -> str:
-    if key in _PATHS and isinstance(value, str) and folder is not None:
+    if key not in _PATHS or not isinstance(value, str):
+        return _value(value)
+    ships = bundled_as(value)
+    if ships is not None and (folder is None or not Path(value).is_relative_to(folder)):
+        return _value(f"{PREFIX}{ships}")
+    if folder is not None:
         try:
             return _value(Path(os.path.relpath(value, folder)).as_posix())
         except ValueError:  # another drive

@@ -8,6 +8,7 @@ from dataclasses import dataclass
 from datetime import UTC, date, datetime
 from pathlib import Path
 
+from forcing.bundled import located
 from forcing.errors import ScenarioError, WeatherError
 from forcing.keys import FLAGS, KEYS
 from forcing.series import parse_time, suggestion
@@ -111,11 +112,14 @@ class Section:
             ) from None
 
     def path(self, key: str, folder: Path) -> Path | None:
-        """Path of an existing file, taken from the folder of the scenario; None where the key is absent."""
+        """Path of an existing file, bundled or taken from the folder of the scenario; None where the key is absent."""
         value = self.text(key)
         if value is None:
             return None
-        path = folder / Path(value).expanduser()
+        try:
+            path = located(value, folder)
+        except ScenarioError as problem:
+            raise ScenarioError(problem.problem, place=self.place(key), remedy=problem.remedy) from None
         if not path.is_file():
             raise ScenarioError(
                 f"no file {path}", place=self.place(key), remedy="file names are taken from the folder of the scenario"

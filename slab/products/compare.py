@@ -8,6 +8,7 @@ from pathlib import Path
 from typing import Any
 
 from forcing.errors import ModelError, ScenarioError
+from forcing.named_files import shown_settings, shown_source
 from forcing.scenario_types import Scenario
 from forcing.weather import ObservedTable
 from slab import __version__
@@ -155,7 +156,8 @@ def compare(days: Sequence[Day], changes: Sequence[Change], *, threshold: float 
         "definitions": {name: one.meaning for name, one in (dict(QUANTITIES) | dict(HOURLY)).items()} | {"blending": BLENDING},
         "run": {
             "hours": first.run.hours, "entrainment": first.run.entrainment, "flux_ratio": first.run.flux_ratio,
-            "version": __version__, "scenario": first.source, "settings": first.settings,
+            "version": __version__, "scenario": shown_source(first),
+            "settings": shown_settings(first),
         },
     }  # fmt: skip
     if sensitivity:

@@ -10,6 +10,7 @@ from zoneinfo import ZoneInfo
 
 import numpy as np
 
+from forcing.named_files import shown_settings, shown_source
 from forcing.remarks import scenario_remarks
 from forcing.scenario import with_step
 from forcing.scenario_types import Assumption, Scenario
@@ -263,8 +264,8 @@ def document_of(done: Run, *, now: datetime | None = None, with_effects: bool = 
             "hours": scenario.run.hours, "output_minutes": scenario.run.output_minutes,
             "entrainment": scenario.run.entrainment, "flux_ratio": scenario.run.flux_ratio,
             "shear_factor": scenario.run.shear_factor, "spin_up_factor": scenario.run.spin_up_factor,
-            "stopped": done.stopped, "version": __version__, "scenario": scenario.source,
-            "settings": scenario.settings,
+            "stopped": done.stopped, "version": __version__, "scenario": shown_source(scenario),
+            "settings": shown_settings(scenario),
         },
     }  # fmt: skip
     document["cautions"] = complete(document)

@@ -14,6 +14,7 @@ from typing import Any
 
 import numpy as np
 
+from forcing.named_files import shown_files, shown_settings, shown_source
 from forcing.scenario_types import Scenario
 from slab.spray_words import heading_words, plan_words
 from slab.wording import Clock
@@ -73,16 +74,18 @@ def digest(path: str) -> str:
         return "not readable"
 
 
-def _inputs(scenario: Scenario, observed: str) -> list[tuple[str, str]]:
-    """Files that went in, to be hashed; a scenario made of flags has no file of its own."""
-    named = [("scenario", scenario.source if scenario.text else "")]
+def _inputs(scenario: Scenario, observed: str) -> list[tuple[str, str, str]]:
+    """Files that went in: what each is, its name to show, its path to hash; flags have no file of their own."""
+    shown = shown_files(scenario)
+    named = [("scenario", shown_source(scenario), scenario.source if scenario.text else "")]
     keys = (("profile", "profile", "file"), ("later profile", "profile", "later"), ("weather", "weather", "file"),
             ("fluxes", "surface", "fluxes"))  # fmt: skip
     for name, section, key in keys:
         values = scenario.settings.get(section)
-        named.append((name, str(values.get(key) or "") if isinstance(values, Mapping) else ""))
-    named.append(("observed", observed))
-    return [(name, path) for name, path in named if path]
+        path = str(values.get(key) or "") if isinstance(values, Mapping) else ""
+        named.append((name, shown.get(f"{section}.{key}", path), path))
+    named.append(("observed", observed, observed))
+    return [one for one in named if one[2]]
 
 
 def record_csv(document: Document, scenario: Scenario) -> str:
@@ -91,7 +94,7 @@ def record_csv(document: Document, scenario: Scenario) -> str:
 
     The same inputs, versions and moment give the same bytes again.
     """
-    settings = json.dumps(scenario.settings, sort_keys=True, default=str, ensure_ascii=False)
+    settings = json.dumps(shown_settings(scenario), sort_keys=True, default=str, ensure_ascii=False)
     observed = str((document["observed"] or {}).get("file", ""))
     limits = {key: value for key, value in document["limits"].items() if key != "order"}
     low, high = document["between_m"]
@@ -100,7 +103,7 @@ def record_csv(document: Document, scenario: Scenario) -> str:
         f"versions: daylayer {document['run']['version']}, python {platform.python_version()}, numpy {np.__version__}",
         f"site: {json.dumps(document['site'], ensure_ascii=False)}",
         f"profile: {json.dumps({k: v for k, v in document['profile'].items() if k != 'tops'}, ensure_ascii=False)}",
-        *(f"input {name}: {path}, sha256 {digest(path)}" for name, path in _inputs(scenario, observed)),
+        *(f"input {name}: {shown}, sha256 {digest(path)}" for name, shown, path in _inputs(scenario, observed)),
         f"settings sha256: {hashlib.sha256(settings.encode()).hexdigest()}",
         f"settings: {settings}",
         f"limits: {json.dumps(limits, ensure_ascii=False)}",
