@@ -28,6 +28,8 @@ WORDS = {
     "none": ("none", "no inversion"),
 }  # fmt: skip
 """Words for up to two hours and for more."""
+MARK = "#000000"
+SUN_MARKS = {"sunrise": "^", "sunset": "v"}
 
 
 @dataclass(frozen=True, slots=True)
@@ -72,6 +74,27 @@ def draw_strip(axes: Axes, document: Document, day: Day) -> None:
         _write(axes, (at + 0.5 * long, 0.5), "not in the run" if long > 2 else "–", SHADES[0])
     for at in range(1, 24):
         axes.axvline(at, color="#8a8a8a", linewidth=0.35, zorder=3)
+    _marks(axes, document, day)
+
+
+def _marks(axes: Axes, document: Document, day: Day) -> None:
+    """Sunrise and sunset at the foot of the strip, and a bar for the present moment."""
+    for night in document["nights"]:
+        for key, mark in SUN_MARKS.items():
+            at = _clock_hour(document, day, night[key])
+            if at is not None:
+                axes.plot(at, 0.09, mark, color=MARK, markeredgecolor="white", markersize=5.5, zorder=5)
+    now = _clock_hour(document, day, document["now"])
+    if now is not None:
+        axes.axvline(now, color=MARK, linewidth=2.2, zorder=3.5)
+
+
+def _clock_hour(document: Document, day: Day, moment: str | None) -> float | None:
+    """Hour of the day's clock, None on another day."""
+    if moment is None:
+        return None
+    local = Clock.of(document).local(datetime.fromisoformat(moment))
+    return local.hour + local.minute / 60.0 if local.date() == day.date else None
 
 
 def _shades(axes: Axes, document: Document, day: Day) -> dict[int, str]:

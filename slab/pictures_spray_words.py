@@ -6,6 +6,7 @@ from collections.abc import Mapping
 from typing import Any
 
 from matplotlib.figure import Figure
+from matplotlib.lines import Line2D
 from matplotlib.patches import Rectangle
 
 from slab.pictures_style import LINE, SMALL, Ruler
@@ -82,4 +83,13 @@ def _legend(figure: Figure, top: float, ruler: Ruler) -> float:
         figure.add_artist(patch)
         figure.text(x + box[0] + 0.005, y + 0.003, name, fontsize=SMALL)
         x += wide
+    figure.add_artist(Line2D([x + 0.004, x + 0.004], [y, y + box[1]], color="#000000", linewidth=2.2))
+    figure.text(x + 0.010, y + 0.003, "now", fontsize=SMALL)
+    x += 0.010 + ruler.width("now", SMALL) + 0.014
+    for mark, name in (("^", "sunrise"), ("v", "sunset")):
+        figure.add_artist(
+            Line2D([x], [y + 0.5 * box[1]], marker=mark, color="#000000", markersize=5.5, linestyle="none")
+        )
+        figure.text(x + 0.008, y + 0.003, name, fontsize=SMALL)
+        x += 0.008 + ruler.width(name, SMALL) + 0.014
     return y - 0.012

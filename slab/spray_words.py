@@ -11,6 +11,7 @@ from slab.wording import Clock, Units, number
 
 __all__ = [
     "LIMIT_NAMES",
+    "from_now",
     "heading_words",
     "limit_sentences",
     "lines_of_inversion",
@@ -19,6 +20,7 @@ __all__ = [
     "span",
     "spray_wind",
     "statement",
+    "stretch_mark",
 ]
 
 Document = Mapping[str, Any]
@@ -35,6 +37,14 @@ LIMIT_NAMES = {
 }
 PLAN = "plan only"
 PAST = "past"
+
+
+def stretch_mark(clock: Clock, one: Mapping[str, Any], now: str) -> str:
+    """The mark of a stretch: past, plan only, or past up to now and plan only from there."""
+    begun = datetime.fromisoformat(one["start"]) < datetime.fromisoformat(now)
+    if one["plan_only"] and begun:
+        return f"{PAST} to {clock.say(now, utc=False, zone=False)}, then {PLAN}"
+    return plan_words(one["plan_only"])
 
 
 def plan_words(plan_only: bool) -> str:
@@ -94,37 +104,87 @@ def _hours_from(window: Mapping[str, Any], event: str | None, name: str) -> str:
 
 
 def lines_of_inversion(document: Document, units: Units) -> list[str]:
-    """One or two sentences for every night that the run touches."""
-    clock, out = Clock.of(document), []
-    low, high = document["between_m"]
+    """One sentence for every night that the run touches, those still ahead before those that are over."""
+    now = datetime.fromisoformat(document["now"])
+    over = [_is_over(night, now) for night in document["nights"]]
+    ordered = [
+        night
+        for wanted in (False, True)
+        for night, past in zip(document["nights"], over, strict=True)
+        if past is wanted
+    ]
+    return [_night(document, night, units) for night in ordered]
+
+
+def _is_over(night: Mapping[str, Any], now: datetime) -> bool:
+    last = night["end"]["late"] if night["end"] else night["to"]
+    return datetime.fromisoformat(last) < now
+
+
+def _night(document: Document, night: Mapping[str, Any], units: Units) -> str:
+    clock, (low, high) = Clock.of(document), document["between_m"]
+    local = clock.local(datetime.fromisoformat(night["from"]))
+    name = f"night from {local:%a} {local.day} {local:%b}"
+    onset, end, parts = night["onset"], night["end"], []
+    if onset:
+        some = _members(onset["members"], night["of_members"])
+        ends = span(clock, (onset["early"], onset["late"]), joined="and")
+        parts.append(f"begins between {ends}{_hours_from(onset, night['sunset'], 'sunset')}{some}")
+    elif night["there_before"]:
+        parts.append("is there from before")
+    if end:
+        some = _members(end["members"], night["of_members"])
+        ends = span(clock, (end["early"], end["late"]), joined="and")
+        parts.append(f"ends between {ends}{_hours_from(end, night['sunrise'], 'sunrise')}{some}")
+    elif night["goes_on"]:
+        parts.append("does not end within this night of the run")
+    if not parts:
+        return f"{name}: {_nothing(document, night, clock)}."
+    strong = night["strongest_difference_K"]
+    if strong is not None and strong > 0.0:
+        parts.append(f"at most {units.difference(strong)} between {low:g} and {high:g} m")
+    return f"{name}: an inversion {', '.join(parts)}."
+
+
+def _nothing(document: Document, night: Mapping[str, Any], clock: Clock) -> str:
+    """A night without an inversion in the run, or one that the run says nothing about."""
+    last, (low, high) = document["series"]["time"][-1], document["between_m"]
+    stop, sunset = datetime.fromisoformat(last), night["sunset"]
+    ended = clock.say(last, utc=False, zone=False)
+    if sunset is not None and stop < datetime.fromisoformat(sunset):
+        return f"not covered, the run ends at {ended}, before sunset"
+    known = f" to {ended}, where the run ends" if stop < datetime.fromisoformat(night["to"]) else ""
+    return f"no inversion between {low:g} and {high:g} m{known}"
+
+
+def from_now(document: Document) -> list[str]:
+    """What the inversion means for work that begins now: how far the next window is, or in which one this is."""
+    clock, moment, times = Clock.of(document), document["now"], document["series"]["time"]
+    now, last = datetime.fromisoformat(moment), datetime.fromisoformat(times[-1])
+    if not datetime.fromisoformat(times[0]) <= now < last:
+        return []
+    here = f"Now, {clock.say(moment, utc=False)}"
     for night in document["nights"]:
-        local = clock.local(datetime.fromisoformat(night["from"]))
-        name = f"night from {local:%a} {local.day} {local:%b}"
-        onset, end, parts = night["onset"], night["end"], []
-        if onset:
-            ends = (onset["early"], onset["late"])
-            some = _members(onset["members"], night["of_members"])
-            parts.append(
-                f"begins between {span(clock, ends, joined='and')}{_hours_from(onset, night['sunset'], 'sunset')}{some}"
-            )
-        elif night["there_before"]:
-            parts.append("is there from before")
-        if end:
-            ends = (end["early"], end["late"])
-            some = _members(end["members"], night["of_members"])
-            parts.append(
-                f"ends between {span(clock, ends, joined='and')}{_hours_from(end, night['sunrise'], 'sunrise')}{some}"
-            )
-        elif night["goes_on"]:
-            parts.append("does not end within this night of the run")
-        strong = night["strongest_difference_K"]
-        if not parts:
-            out.append(f"{name}: no inversion between {low:g} and {high:g} m in the hours that the run covers.")
+        onset, end = night["onset"], night["end"]
+        if _is_over(night, now) or not (onset or end or night["there_before"]):
             continue
-        if strong is not None and strong > 0.0:
-            parts.append(f"at most {units.difference(strong)} between {low:g} and {high:g} m")
-        out.append(f"{name}: an inversion {', '.join(parts)}.")
-    return out
+        if onset and now < datetime.fromisoformat(onset["early"]):
+            ahead = (datetime.fromisoformat(onset["early"]) - now).total_seconds() / 3600.0
+            first = clock.say(onset["early"], utc=False, zone=False)
+            return [
+                f"{here}: the next inversion may begin from {first}, {ahead:.1f} h ahead; work still under way then may be in it."
+            ]
+        if onset and now <= datetime.fromisoformat(onset["late"]):
+            window = span(clock, (onset["early"], onset["late"]))
+            return [f"{here}, lies in the window of onset, {window}: an inversion may be there already."]
+        if end and now >= datetime.fromisoformat(end["early"]):
+            until = clock.say(end["late"], utc=False, zone=False)
+            return [f"{here}, lies in the window of the end: an inversion may last to {until}, on low ground longer."]
+        until = "does not end in the hours of the run"
+        if end:
+            until = f"ends between {span(clock, (end['early'], end['late']), joined='and')}, on low ground later"
+        return [f"{here}: the run has an inversion; it {until}."]
+    return [f"{here}: no inversion in any member to {clock.say(times[-1], utc=False, zone=False)}, where the run ends."]
 
 
 def _members(have: int, of: int) -> str:
@@ -170,17 +230,10 @@ def _ranges(limits: Mapping[str, Any]) -> str:
 
 def statement(document: Document, units: Units) -> list[str]:
     """The answer in sentences: inside or not, the inversion by night, low ground, the tower."""
-    clock, limits = Clock.of(document), document["limits"]
-    out = []
-    if limits["given"]:
-        inside = [one for one in document["stretches"] if one["status"] == "inside"]
-        if inside:
-            said = "; ".join(_stretch(clock, one) for one in inside)
-            out.append(f"Inside your own limits, with no inversion in any member: {said}. Plan only.")
-        else:
-            out.append(
-                "No hour of the run is inside your own limits without a possible inversion or an input that is not known."
-            )
+    clock = Clock.of(document)
+    out = from_now(document)
+    if document["limits"]["given"]:
+        out += _inside(document, clock)
     if not document["summary"]["wind_known"]:
         out.append("The wind is not known: no hour can be inside.")
     out += lines_of_inversion(document, units)
@@ -196,6 +249,33 @@ def statement(document: Document, units: Units) -> list[str]:
     if seen:
         out.append(_tower(seen, clock, units))
     return out
+
+
+def _inside(document: Document, clock: Clock) -> list[str]:
+    """Stretches inside the user's limits: those to come, then those that are past."""
+    found = [one for one in document["stretches"] if one["status"] == "inside"]
+    coming = [_rest(one, document["now"]) for one in found if one["plan_only"]]
+    past = [one for one in found if not one["plan_only"]]
+    out = []
+    if coming:
+        said = "; ".join(_stretch(clock, one) for one in coming)
+        out.append(f"Inside your own limits, with no inversion in any member: {said}. Plan only.")
+    elif any(hour["plan_only"] for hour in document["calendar"]):
+        out.append(
+            "No hour to come is inside your own limits without a possible inversion or an input that is not known."
+        )
+    if past:
+        said = "; ".join(_stretch(clock, one) for one in past)
+        out.append(f"Of the past hours, as modelled, inside your own limits: {said}.")
+    elif not coming:
+        out.append("No past hour of the run is inside them as modelled.")
+    return out
+
+
+def _rest(one: Mapping[str, Any], now: str) -> Mapping[str, Any]:
+    """What is still to come of a stretch."""
+    begun = datetime.fromisoformat(one["start"]) < datetime.fromisoformat(now)
+    return {**one, "start": now, "start_spread": None} if begun else one
 
 
 def _stretch(clock: Clock, one: Mapping[str, Any]) -> str:

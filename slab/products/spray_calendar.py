@@ -193,7 +193,9 @@ def stretches(
 
 def _spread(edge: str, codes: tuple[str, str], rows: Array, judged: Rows, nights: Sequence[Night]) -> list[str] | None:
     """Range in which an end of a stretch may lie: the nearest window of onset or end where the inversion decides, else
-    where the members part; None where they all agree or it is no matter of the air."""
+    where the members part; None where they all agree, it is no matter of the air, or the stretch is such a window itself."""
+    if codes[0] in ("possible inversion", POSSIBLE):
+        return None
     moment = datetime.fromisoformat(edge).timestamp()
     if any(code in ("inversion", "possible inversion", PRESENT, POSSIBLE) for code in codes):
         windows = [outward(one) for night in nights for one in (night.onset, night.end) if one is not None]

@@ -31,11 +31,9 @@ def hourly_lines(document: Document, units: Units) -> list[str]:
     words = {n + 1 for n, column in enumerate(columns) if column[3]}
     lines = [_aligned(row, widths, words) for row in grid]
     out = [
-        (
-            f"hour by hour, values of the middle of the hour; stability and difference from {low:g} to {high:g} m; heights above "
-            "ground;"
-        ),
-        "since: hours since the last break-up; a dash is none or not known; (+n): n more reasons, in the JSON",
+        f"hour by hour: values of its middle; stability and difference from {low:g} to {high:g} m; heights above ground;",
+        "invers and answer: the worst of its begin, middle and end; since: hours since the last break-up;",
+        "a dash is none or not known; (+n): n more reasons, in the JSON",
         *lines[:2],
     ]
     day = None

@@ -9,7 +9,7 @@ from typing import Any
 
 from slab.products.spray_table import hourly_lines
 from slab.spray_cautions import spray_cautions
-from slab.spray_words import LIMIT_NAMES, heading_words, limit_sentences, plan_words, profile_age, span, statement
+from slab.spray_words import LIMIT_NAMES, heading_words, limit_sentences, profile_age, span, statement, stretch_mark
 from slab.wording import Clock, Units, units_named
 
 __all__ = ["spray_text"]
@@ -98,7 +98,7 @@ def _stretches(document: Document) -> list[str]:
         for word, key in (("start", "start_spread"), ("end", "end_spread")):
             if one[key]:
                 text += f"; {word} {span(clock, one[key])}"
-        lines += _wrapped([f"{text} [{plan_words(one['plan_only'])}]"], "  ")
+        lines += _wrapped([f"{text} [{stretch_mark(clock, one, document['now'])}]"], "  ")
     return lines
 
 
