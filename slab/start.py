@@ -19,7 +19,7 @@ from slab.growth import encroached_mass
 
 Array = NDArray[np.float64]
 
-CRITICAL_RICHARDSON = 0.25  # common practice for the top of a turbulent layer (TRADE range 0.24 to 0.39, Zhang et al. 2014)
+CRITICAL_RICHARDSON = 0.25  # common practice for the top of a turbulent layer (fitted values 0.24 to 0.39, Zhang et al. 2014)
 SHALLOWEST, DEEPEST = 20.0, 300.0  # [m] bounds of the first layer: stable layers are seen from tens to a few hundred m
 SOIL_DAYS = 4
 SOIL_STEP = 3600.0  # [s]
