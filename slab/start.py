@@ -21,6 +21,7 @@ Array = NDArray[np.float64]
 
 CRITICAL_RICHARDSON = 0.25  # common practice for the top of a turbulent layer (fitted values 0.24 to 0.39, Zhang et al. 2014)
 SHALLOWEST, DEEPEST = 20.0, 300.0  # [m] bounds of the first layer: stable layers are seen from tens to a few hundred m
+STRATIFIED = 0.2  # [K] our choice
 SOIL_DAYS = 4
 SOIL_STEP = 3600.0  # [s]
 YESTERDAY_HEIGHT = 1000.0  # [m] where the residual layer's theta is read
@@ -60,8 +61,17 @@ def turbulent_depth(height: Array, theta_v: Array, speed: Array) -> float:
 
 
 def mixed_mass(air: Aloft) -> float:
-    """Mass [kg m-2] of the layer that convection has mixed: mixing it further would leave it stable at its top."""
-    return encroached_mass(air, air, 0.0, 0.0, 0.0, 0.0, mass_of(air, SHALLOWEST))
+    """Mass [kg m-2] of the layer that convection has mixed, 20 m or more.
+
+    It ends where virtual potential temperature passes the mean of the air below by `STRATIFIED`: measured and computed
+    mixed layers are never neutral to the last tenth of a kelvin.
+    """
+    mass = np.asarray(air.mass)
+    virtual = np.asarray(air.theta) * (1.0 + VIRTUAL * np.asarray(air.humidity))
+    running = np.concatenate(([0.0], np.cumsum(np.diff(mass) * 0.5 * (virtual[1:] + virtual[:-1]))))
+    below = running[1:] / mass[1:]
+    over = np.flatnonzero((virtual[1:] > below + STRATIFIED) & (np.asarray(air.height)[1:] >= SHALLOWEST))
+    return float(mass[int(over[0]) + 1]) if over.size else float(mass[-1])
 
 
 def sheared_mass(air: Aloft) -> float:
@@ -134,38 +144,41 @@ def ground_start(scenario: Scenario, ground: Ground) -> GroundStart:
         SOIL_DAYS,
         out,
     )
-    shift = screen_shift(scenario, ground, out[0], float(longwave[0]))
+    shift, under_release = screen_shift(scenario, ground, out[0], float(longwave[0]))
     soil = tuple(float(x) + shift for x in out)
-    return GroundStart(soil, float(skin) + shift, deep, coldest, warmest, shift)
+    return GroundStart(soil, float(skin) if math.isnan(under_release) else under_release, deep, coldest, warmest, shift)
 
 
-def screen_shift(scenario: Scenario, ground: Ground, soil: float, longwave: float) -> float:
-    """Kelvin by which the ground must start warmer for the screen temperature to come out as the release measured it.
+def screen_shift(scenario: Scenario, ground: Ground, soil: float, longwave: float) -> tuple[float, float]:
+    """Kelvin by which the ground must start warmer for the screen temperature to come out as the release measured it, and
+    the skin temperature [K] that goes with it.
 
     Only where the release found stable air over the lowest 20 m: similarity between the skin and the air there then gives
-    a screen temperature that the ground decides. At most `MOST_SHIFT` either way; 0 where 20 m are not stable.
+    a screen temperature that the ground decides. At most `MOST_SHIFT` either way; 0 and NaN where 20 m are not stable.
     """
     profile = scenario.profile
     exner = (profile.surface_pressure / P_REFERENCE) ** KAPPA
     measured = float(profile.theta[0]) * exner
     over = float(np.interp(WIND_HEIGHT, profile.height, profile.theta)) * exner
     if over <= measured + GRAVITY / CP_DRY * WIND_HEIGHT:
-        return 0.0
+        return 0.0, math.nan
     humidity = float(np.interp(WIND_HEIGHT, profile.height, profile.humidity))
     wind = float(np.interp(WIND_HEIGHT, profile.height, np.hypot(profile.u, profile.v)))
     sun = float(shortwave(scenario, np.array([profile.valid.timestamp()]))[0])
     half = 2.0 * ground.soil_conductivity / soil_layers(ground)[0]
 
-    def screen_at(shift: float) -> float:
+    def screen_at(shift: float) -> tuple[float, float]:
         exchange = energy_balance(
             ground, sun, longwave, over, humidity, WIND_HEIGHT, wind, WIND_HEIGHT, SHALLOWEST, profile.surface_pressure,
             soil + shift, half, 0.0, soil + shift, 0.0,
         )  # fmt: skip
-        return screen(ground, exchange, over, humidity, WIND_HEIGHT, wind, WIND_HEIGHT, profile.surface_pressure,
-                      SCREEN_HEIGHT).temperature  # fmt: skip
+        air = screen(ground, exchange, over, humidity, WIND_HEIGHT, wind, WIND_HEIGHT, profile.surface_pressure,
+                     SCREEN_HEIGHT)  # fmt: skip
+        return air.temperature, exchange.skin_temperature
 
     low, high = -MOST_SHIFT, MOST_SHIFT
     for _ in range(12):
         middle = 0.5 * (low + high)
-        low, high = (middle, high) if screen_at(middle) < measured else (low, middle)
-    return 0.5 * (low + high)
+        low, high = (middle, high) if screen_at(middle)[0] < measured else (low, middle)
+    shift = 0.5 * (low + high)
+    return shift, screen_at(shift)[1]
