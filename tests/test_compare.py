@@ -33,7 +33,7 @@ from slab.products.compare_files import compare_csv, compare_netcdf
 from slab.products.compare_spread import MANY, spread
 from slab.products.compare_text import compare_text
 from slab.products.compare_tiles import march, tile_check
-from slab.products.covers import covers_csv, covers_document, covers_text, ranges
+from slab.products.covers import UNCHECKED, covers_csv, covers_document, covers_text, ranges
 from slab.products.days import Day
 from slab.products.events import summary
 from slab.wording import units_named
@@ -274,6 +274,18 @@ def test_covers_have_every_property_with_a_range_and_a_source() -> None:
     words = covers_text(found, full=False)
     assert "compact high buildings" in words
     assert not VERDICTS.search(words)
+
+
+def test_sources_are_published_or_said_to_be_unchecked_and_that_is_explained_once() -> None:
+    found = covers_document()
+    sources = {one["source"] for cover in found["covers"] for one in cover["properties"].values()}
+    for source in sources:
+        assert not re.search(r"recalled|\bE\d{3}\b|course text|not used", source), source
+    assert any(UNCHECKED in source for source in sources)
+    assert UNCHECKED in found["notes"]["sources"]
+    text = covers_text(covers_document(["short grass"]), full=True)
+    assert text.count("\nsources: where it says") == 1
+    assert covers_text(found, full=False).count(found["notes"]["built_classes"]) == 1
 
 
 def test_range_of_a_mixture_and_of_a_cover_of_ones_own() -> None:

@@ -15,6 +15,12 @@ from slab.products.changes import BLENDING
 
 SCHEMA = "daylayer/1"
 WIDTH = 112
+UNCHECKED = "not checked against the source"
+SOURCES_NOTE = (
+    f"where it says ({UNCHECKED}), the number was noted from memory of that source, which was not opened again; lean on the "
+    "range more than on the value"
+)
+BUILT_NOTE = "the built classes follow a published classification (local climate zones, Stewart & Oke 2012)"
 MEANINGS: Mapping[str, str] = {
     "albedo": "reflected part of sunlight",
     "emissivity": "emitted part of black-body radiation",
@@ -115,6 +121,8 @@ def covers_document(wanted: Sequence[str] = (), own: Mapping[str, Cover] | None 
         "covers": [_entry(resolve(name, mine)) for name in names],
         "notes": {
             "blending": BLENDING,
+            "sources": SOURCES_NOTE,
+            "built_classes": BUILT_NOTE,
             "soil_moisture": "conductivity and heat capacity are linear between dry (wilting point) and wet (field capacity)",
             "bare_soil_resistance_s_m": {str(m): round(soil_resistance(m), 1) for m in (0.0, 0.25, 0.5, 0.75, 1.0)},
             "anthropogenic_course": {str(h): round(anthropogenic_course(float(h)), 3) for h in range(24)},
@@ -169,6 +177,8 @@ def covers_text(document: Mapping[str, Any], *, full: bool) -> str:
     notes = document["notes"]
     course = notes["anthropogenic_course"]
     lines += [
+        notes["built_classes"],
+        *(textwrap.wrap(f"sources: {notes['sources']}", WIDTH, subsequent_indent="  ") if full else ()),
         *textwrap.wrap(f"mixtures: {notes['blending']}", WIDTH, subsequent_indent="  "),
         "heat from people over its daily mean, by local hour: "
         + ", ".join(f"{hour} h {course[str(hour)]:.2f}" for hour in (3, 8, 13, 18, 23)),
