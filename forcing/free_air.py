@@ -22,7 +22,7 @@ from forcing.speed import COMPILED
 
 LOW, HIGH = 1000.0, 4000.0  # [m above ground] the air whose cooling stands for the free air
 LEVELS = 25
-CAP = 2000.0  # [m] sinking grows linearly up to here, then is constant (contract of the scenario)
+CAP = 2000.0  # [m] sinking grows linearly up to here, then is constant (our choice; said beside the key of the scenario)
 STABLE_FROM = 2000.0  # [m] the gradient that sinking acts on is read from here to `HIGH`
 LEAST_GRADIENT = 0.002  # [K m-1] below this the balance would ask for sinking that nobody sees
 MOST = 1e-5  # [s-1]

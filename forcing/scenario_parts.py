@@ -29,7 +29,7 @@ if TYPE_CHECKING:
     from forcing.cover import Cover
     from forcing.sounding import Profile, Sounding
 
-#: Difference of elevation [m] from which a profile is re-based without being asked (DESIGN section 7).
+#: Difference of elevation [m] from which a profile is re-based without being asked (our choice).
 REBASE_FROM_M = 100.0
 DEFAULT_REBASE = "sea-level"
 DEFAULT_COVER = "short grass"

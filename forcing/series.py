@@ -21,7 +21,7 @@ from forcing.errors import WeatherError
 
 Array = NDArray[np.float64]
 
-#: Longest gap [s] that is bridged by interpolation (DESIGN C2).
+#: Longest gap [s] that is bridged by interpolation (our choice).
 LONGEST_GAP_S = 3 * 3600.0
 _MISSING = frozenset({"", "nan", "na", "null", "-"})
 

@@ -187,7 +187,7 @@ def _known(value: float | None) -> bool:
 class Style:
     """How numbers are shown: metric or us. A missing number (None, NaN) is shown as a dash.
 
-    Rounding (common practice, TRADE 1.5): depth to 50 m or 100 ft, ventilation to two figures.
+    Rounding (common practice): depth to 50 m or 100 ft, ventilation to two figures.
     """
 
     name: str

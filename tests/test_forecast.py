@@ -60,7 +60,7 @@ def quick(one: Scenario, **settings: object) -> dict[str, Any]:
     return forecast(one, now=NOW, with_effects=False)
 
 
-def test_the_document_holds_what_the_contract_names(summer: dict[str, Any]) -> None:
+def test_the_document_holds_every_part_with_its_keys(summer: dict[str, Any]) -> None:
     assert summer["schema"] == "daylayer/1"
     for key, kind in {
         "site": dict, "profile": dict, "assumptions": LIST, "repairs": LIST, "warnings": LIST, "cautions": LIST,

@@ -9,7 +9,7 @@ def listed(text: str) -> list[str]:
     return text.split()
 
 
-# the lists of the contract on the JSON result
+# what the JSON result holds
 SERIES_KEYS = listed("""time regime mixing_depth_m depth_method residual_top_m theta_K mixing_ratio_g_kg temperature_2m_C
 dewpoint_2m_C relative_humidity_2m_pct wind_10m_m_s transport_wind_m_s transport_wind_from_deg ventilation_m2_s
 shortwave_down_W_m2 longwave_down_W_m2 net_radiation_W_m2 sensible_flux_W_m2 latent_flux_W_m2 ground_flux_W_m2
@@ -36,7 +36,7 @@ UNIT_ENDINGS = {
 }  # fmt: skip
 
 
-def test_every_key_of_the_contract_is_described() -> None:
+def test_every_key_of_the_result_is_described() -> None:
     assert set(SERIES_KEYS) <= set(SERIES)
     assert set(SUMMARY_KEYS) <= set(SUMMARY)
     assert set(SPRAY_KEYS) <= set(SERIES)

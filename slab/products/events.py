@@ -22,8 +22,8 @@ Array = NDArray[np.float64]
 
 FIRST_HOURS = 24.0  # extremes of "the day" are looked for in the first 24 hours of the run
 CUMULUS_SEEN = 0.01  # [1] area fraction from which cumulus are said to have begun (our choice)
-INVERSION_HEIGHTS = (1.5, 9.0)  # [m] the two named heights of inversion onset, those of the mesonets in TRADE 2.3
-DEEP_SUBCLOUD, DRY_SPREAD = 1500.0, 15.0  # [m, K] our thresholds for the dry-outflow note; the ingredients are WRTA's
+INVERSION_HEIGHTS = (1.5, 9.0)  # [m] the two named heights of inversion onset, those of the sensors of Oklahoma Mesonet stations
+DEEP_SUBCLOUD, DRY_SPREAD = 1500.0, 15.0  # [m, K] our thresholds for the dry-outflow note; the ingredients: NWS Western Region TA 00-09
 MORNING_ENDS = 11.0  # [h] solar time
 HOLDS = 5400.0  # [s] an evening event counts once it lasts this long: cloud at noon makes no evening (our choice)
 ENTRAINMENT_ZONE = 1.125  # top of an entrainment zone a quarter of the depth thick

@@ -225,7 +225,7 @@ def _afternoon(done: Run, answers: dict[str, Any]) -> int:
 
 
 def document_of(done: Run, *, now: datetime | None = None, with_effects: bool = True) -> dict[str, Any]:
-    """The result document of a finished run (contract C4): plain values, missing is None.
+    """The result document of a finished run: plain values, missing is None.
 
     Parameters
     ----------

@@ -169,7 +169,7 @@ def test_c058_warming_is_a_fifth_faster_with_entrained_heat() -> None:
 
 
 def test_mass_weighting_matters() -> None:
-    """A heat flux of 200 W m-2 for 8 h, 5 K/km: 1.41 km without and 1.67 km with entrainment (TRADE, derived)."""
+    """A heat flux of 200 W m-2 for 8 h, 5 K/km: 1.41 km without and 1.67 km with entrainment (derived here)."""
     flux = 200.0 / 1156.0
     for closure, depth in ((ENCROACHMENT, 1412.0), (PLAIN, 1670.0)):
         done = grow(depth=0.0, jump=0.0, gradient=0.005, heat_flux=lambda t: flux, hours=8.0, closure=closure)
