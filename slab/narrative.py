@@ -12,7 +12,7 @@ __all__ = ["cumulus_words", "day_sentences", "evening_depth", "gust_words", "hea
 
 Document = Mapping[str, Any]
 
-FEW_CUMULUS = 0.02  # cumulus fraction that hours after the first stay under for "mostly blue" (our choice)
+FEW_CUMULUS = 0.02  # cumulus fraction that hours after the first stay under for "almost none" (our choice)
 SCATTERED = 0.1  # cumulus fraction from which cumulus are not called few (our choice)
 CLEARLY = 0.1  # part of the first day's depth that a later day's must differ by to be told (our choice)
 CONVECTIVE = "the surface temperature at which the morning profile's own air would make cumulus without any mixing"
@@ -164,7 +164,7 @@ def cumulus_words(document: Document, units: Units, clock: Clock) -> str:
     hours = _hours_after(document, clock, onset)
     later = [fraction for _, fraction, _ in hours[1:]]
     if hours and later and max(later) < FEW_CUMULUS and hours[0][1] < SCATTERED:
-        return f"a few cumulus around {when}, then mostly blue, {base}"
+        return f"a few cumulus around {when}, then almost none, {base}"
     return f"cumulus from about {when}, {base}"
 
 

@@ -72,8 +72,8 @@ class Top:
 
 EXPLANATIONS: Final[dict[str, str]] = {
     "half a kelvin": "virtual potential temperature first 0.5 K over its minimum (below 4 km)",
-    "parcel": "surface air lifted dry meets its own virtual temperature (Holzworth)",
-    "parcel + 2 K": "the same with 2 K added at the surface (agency practice)",
+    "parcel": "surface air lifted dry meets its own virtual temperature (Holzworth; EPA-454/R-99-005 6.5.1)",
+    "parcel + 2 K": "the same with 2 K added at the surface (common practice)",
     "morning rule": "dry adiabat from the surface temperature + 5 K (EPA-454/R-99-005 6.5.1)",
     "virtual gradient": "steepest rise of virtual potential temperature, 100 m to 4 km",
     "humidity gradient": "steepest fall of specific humidity, 100 m to 4 km",

@@ -126,8 +126,8 @@ def test_a_burst_of_cumulus_is_told_from_a_day_of_them() -> None:
     document["series"]["condensation_level_m"][5:8] = [1600.0, 1700.0, 1900.0]
     document["summary"] |= {"cumulus_onset_time": document["series"]["time"][5], "cumulus_base_m": 1600.0}
     text = flat(forecast_text(document))
-    assert "A few cumulus around 10:00 local (16:00 UTC), then mostly blue, base 1600 to 1900 m above ground." in text
-    assert "a few cumulus around 10:00, then mostly blue, base 1600 to 1900 m." in text
+    assert "A few cumulus around 10:00 local (16:00 UTC), then almost none, base 1600 to 1900 m above ground." in text
+    assert "a few cumulus around 10:00, then almost none, base 1600 to 1900 m." in text
     fractions[8] = 0.15
     assert "Cumulus from about 10:00 local" in flat(forecast_text(document))
 

@@ -189,7 +189,7 @@ def test_the_wind_read_at_10_m_is_the_runs_own_and_it_falls_towards_the_ground()
 def test_stability_words_go_from_unstable_to_strong() -> None:
     words = [stability_word(x) for x in (-0.5, -0.078, 0.0, 0.5, 1.5, 3.0)]
     assert words == [
-        "unstable", "near neutral", "near neutral", "inversion, weak", "inversion, moderate", "inversion, strong",
+        "unstable", "near neutral", "near neutral", "inversion, slight", "inversion, distinct", "inversion, marked",
     ]  # fmt: skip
     assert stability_word(math.nan) == "not known"
 

@@ -68,7 +68,7 @@ class Moment(_Parameter):
             try:
                 moment = datetime.fromisoformat(str(value))
             except ValueError:
-                self.fail(f"'{value}' is not an ISO 8601 time; write it like 2023-05-22T11:00Z.", param, ctx)
+                self.fail(f"'{value}' is not an ISO 8601 time; write it like 2026-07-14T11:30Z.", param, ctx)
         if moment.tzinfo is None:
             self.fail(f"'{value}' has no offset; add Z or one like +02:00.", param, ctx)
         return moment.astimezone(UTC)

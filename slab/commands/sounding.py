@@ -29,7 +29,7 @@ FORMATS = ("csv", "temp", "igra")
 @click.command(
     name="sounding",
     cls=Command,
-    example="daylayer sounding morning.csv --valid 2023-05-22T11:00Z --elevation 391 --picture morning.png",
+    example="daylayer sounding morning.csv --valid 2026-07-14T11:30Z --elevation 330 --picture morning.png",
     short_help="List a profile's levels, repairs, and its top by definition.",
 )
 @click.argument("file")

@@ -40,7 +40,7 @@ DEFINITIONS = {
     f"({timing_words()}), rounded outward to half hours",
     "inside": "inside all limits that you gave, wind known, and no inversion in any member, at begin, middle and end of the hour",
     "Delta-T": "dry minus wet bulb at 2 m; thermodynamic wet bulb, ASHRAE Handbook Fundamentals 2017, chapter 1",
-    "weak, moderate, strong": "under 1, under 2.5 and from 2.5 K per 8 m (our choice)",
+    "slight, distinct, marked": "under 1, under 2.5 and from 2.5 K per 8 m (our choice)",
     "regime": "turbulent, intermittent or very stable: heat that the surface asks for against what turbulence can carry "
     "(Van de Wiel et al. 2012); by day mixed or decaying",
     "wind": "by similarity from the computed 10 m wind, over displacement and roughness of the cover",
@@ -230,7 +230,7 @@ def _warnings(scenario: Scenario, base: Sequence[str]) -> list[str]:
 
 
 def document(made: Plan, *, now: datetime) -> dict[str, Any]:
-    """The result document of a plan (contract C4): plain values, missing is None."""
+    """The result document of a plan: plain values, missing is None."""
     scenario = made.run.scenario
     base = document_of(made.run, now=now, with_effects=False)
     limited = bool(spray_limits(scenario.limits))

@@ -27,7 +27,7 @@ MAST = 10.0  # [m]
 PER_METRES = 8.0  # [m] the difference is scaled to this depth
 DRY_LAPSE = 9.80665 / 1005.0  # [K m-1]
 NEUTRAL = 0.1  # [K per 8 m] of potential temperature: less than sensors tell apart (EPA-454/R-99-005, 8.1.3)
-WEAK, MODERATE = 1.0, 2.5  # [K per 8 m] upper ends of a weak and a moderate inversion (our choice)
+SLIGHT, DISTINCT = 1.0, 2.5  # [K per 8 m] upper ends of a slight and a distinct inversion (our choice)
 DEPOSITS = ("none", "dew", "hoar frost")
 LEAST_HEIGHT = 0.05  # [m] lowest height that a wind is read at
 
@@ -142,7 +142,7 @@ def stability_word(per_8m: float) -> str:
         return "not known"
     if per_8m > 0.0:
         return (
-            "inversion, weak" if per_8m < WEAK else "inversion, moderate" if per_8m < MODERATE else "inversion, strong"
+            "inversion, slight" if per_8m < SLIGHT else "inversion, distinct" if per_8m < DISTINCT else "inversion, marked"
         )
     lift = per_8m + DRY_LAPSE * PER_METRES
     if lift > NEUTRAL:

@@ -12,8 +12,8 @@ RULE_DEPTH = 12.0  # [m] the creek bottom lay 40 ft under the hill (University o
 RULE_LATER = (2.0, 4.0)  # [h] the hill's inversion ended 04 to 06 h, the bottom's at 08 h or later
 FULL_FROM = 6.0  # [m] cold pools formed in a depression only about 6 m deep (Bodine et al. 2009)
 RULE = (
-    "rule of thumb from few observations: one hill and one creek bottom 12 m (40 ft) lower, June 2018, 18 and 22 nights "
-    "with an inversion; the bottom's ended 2 to 4 h later or later still. The same is used from 6 m below the site "
+    "rule of thumb from few observations: in one pair of fields 12 m apart in height the lower one's inversion ended 2 to 4 h "
+    "later or later still. The same is used from 6 m below the site "
     "downwards (cold pools formed in a hollow 6 m deep), in proportion above that. Onset there is earlier by an unknown time."
 )
 SOURCES = "University of Tennessee crop news, July 2018; Bodine et al. 2009, J. Appl. Meteorol. Climatol. 48, 1843"
