@@ -194,8 +194,8 @@ def _own_assumptions(done: Run) -> list[dict[str, Any]]:
         found.append((
             "soil temperature at the start",
             f"{s.soil[0] - 273.15:.1f} C under the skin, {s.deep - 273.15:.1f} C deep",
-            f"four days between {s.coldest - 273.15:.1f} and {s.warmest - 273.15:.1f} C: surface air at dawn and the residual "
-            "layer brought down dry-adiabatically",
+            (f"four days between {s.coldest - 273.15:.1f} and {s.warmest - 273.15:.1f} C: surface air at dawn and the residual "
+            "layer brought down dry-adiabatically"),
         ))  # fmt: skip
     return [
         {"name": name, "key": "", "value": value, "source": "assumed", "why": why, "step": "", "effect_on_depth_m": None,
