@@ -12,7 +12,6 @@ from typing import NamedTuple
 import numpy as np
 from numpy.typing import NDArray
 
-from forcing.air import VIRTUAL
 from forcing.table import COLUMNS, DIVERGENCE, FRICTION, LATENT, SENSIBLE
 from slab.column import as_numbers, linear, sample
 from slab.daytime import HEAT, MASS, MEMBERS, VAPOUR, Offsets, Place, no_ground, offsets_at
