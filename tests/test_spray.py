@@ -211,6 +211,7 @@ def test_low_ground_ends_later_and_not_earlier_with_depth() -> None:
     assert starts == sorted(starts)
     assert all(one.ends[0] and one.ends[0][1] > 3600.0 for one in fields)
     assert fields[-1].later == fields[2].later == (2.0, 4.0)
+    assert all(moment % 1800.0 == 0.0 for one in fields if one.ends[0] for moment in one.ends[0])
 
 
 # the tower

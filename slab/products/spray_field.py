@@ -6,7 +6,7 @@ import math
 from collections.abc import Sequence
 from dataclasses import dataclass
 
-from slab.products.spray_window import Night, outward
+from slab.products.spray_window import WIDTH_STEP, Night, outward
 
 RULE_DEPTH = 12.0  # [m] the creek bottom lay 40 ft under the hill (University of Tennessee, July 2018)
 RULE_LATER = (2.0, 4.0)  # [h] the hill's inversion ended 04 to 06 h, the bottom's at 08 h or later
@@ -38,7 +38,8 @@ def low_field(below: float, nights: Sequence[Night]) -> LowField:
             ends.append(None)
             continue
         early, late = outward(night.end)
-        ends.append((early + 3600.0 * later[0], math.ceil((late + 3600.0 * later[1]) / 1800.0) * 1800.0))
+        first, last = early + 3600.0 * later[0], late + 3600.0 * later[1]
+        ends.append((math.floor(first / WIDTH_STEP) * WIDTH_STEP, math.ceil(last / WIDTH_STEP) * WIDTH_STEP))
     return LowField(below, later, tuple(ends))
 
 

@@ -34,11 +34,11 @@ class Timing:
     end_late: float
 
 
-TIMING = Timing(onset_early=5400.0, onset_late=5400.0, end_early=1800.0, end_late=3600.0)
+TIMING = Timing(onset_early=5400.0, onset_late=5400.0, end_early=1800.0, end_late=5400.0)
 """From 15 stations of one mesonet night (``python tests/bench/spray_mesonet.py``): with 90 min the 10-90 % window holds 12 of 15
-observed onsets, with 60 min 10, with none 5. The computed end lay half an hour early in the mean and never late by more than
-15 min, so that its late side, which is the dangerous one, gets 60 min (14 of 15; with 30 min 11) and its early side 30. The
-widths are chosen on the night they are counted on."""
+observed onsets, with 60 min 10, with none 5. The computed end lay half an hour early in the mean, up to two hours, and never late
+by more than 15 min, so that its late side, which is the dangerous one, gets 90 min (14 of 15; 60 min stands at an edge of half
+hours and holds 11) and its early side 30. The widths are chosen on the night they are counted on."""
 
 
 def timing_words(timing: Timing = TIMING) -> str:
