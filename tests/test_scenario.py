@@ -121,9 +121,9 @@ def test_everything_assumed_is_listed_with_a_reason(folder: Path) -> None:
         ("weather.cloud_fraction", 0.25),
         ("weather.aerosol_optical_depth", 0.25),
         ("weather.divergence_per_s", 1e-5),
-        ("weather.ozone_cm", 0.4),
     ):
         assert assumed[key].stepped == stepped
+    assert "0.05 K" in assumed["weather.ozone_cm"].why  # a step too small to rerun is told in words
     for key in ("surface.cover", "weather.wind_10m_m_s", "profile.later", "run.entrainment", "run.flux_ratio"):
         assert key in assumed
     wind = assumed["weather.pressure_gradient_wind_m_s"]
