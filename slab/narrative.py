@@ -56,6 +56,9 @@ def day_sentences(document: Document, units: Units, *, brief: bool = False) -> l
         _wind(document, units, brief=brief),
         _evening(summary, clock) + evening_depth(document, units),
     ]
+    night = _night(summary, clock, units)
+    if night:
+        sentences.append(night)
     note = summary.get("dry_outflow_note")
     deep = summary.get("inverted_v_depth_m")
     if note and deep is not None:
@@ -263,6 +266,29 @@ def _evening(summary: Document, clock: Clock) -> str:
         return "When the evening inversion forms is not known from these hours."
     parts = [f"{_joined(words)} {when}" for when, words in known.items()]
     return f"In the evening {'; '.join(parts)}."
+
+
+def _night(summary: Document, clock: Clock, units: Units) -> str:
+    """Dew, frost, fog and the wind that would keep the night mixed; empty where no night was computed."""
+    events = (
+        ("dew_onset_time", "dew"),
+        ("hoar_frost_onset_time", "hoar frost"),
+        ("air_frost_onset_time", "air frost"),
+        ("fog_onset_time", "fog, onset only,"),
+    )
+    known = [
+        f"{words} from about {clock.say(summary[key], half_hours=True, utc=False)}"
+        for key, words in events
+        if summary.get(key) is not None
+    ]
+    wind = summary.get("mixed_night_wind_m_s")
+    if wind is None:
+        return ""
+    least = (
+        f"A wind of {units.speed(wind)} at {units.height(summary['mixed_night_wind_height_m'])} would keep the night's air mixed"
+    )
+    seen = _joined(known) if known else "no dew, frost or fog is computed"
+    return f"In the first night {seen}. {least}."
 
 
 def evening_depth(document: Document, units: Units) -> str:

@@ -10,7 +10,8 @@ import numpy as np
 import pytest
 from spray_cases import plain_document
 
-from slab.products.spray_window import TIMING, _window, outward, since_break_up, spells, timing_words
+from slab.products.spray_window import _window, outward, since_break_up, spells, timing_words
+from slab.timing import TIMING
 
 
 def rows(count: int) -> np.ndarray:

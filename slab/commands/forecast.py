@@ -34,6 +34,13 @@ daylayer forecast --profile morning.csv --latitude 39.2 --longitude -98.6 --elev
 )
 @case_argument
 @case_options
+@click.option(
+    "--height",
+    "heights",
+    type=click.FloatRange(0.5, 100.0),
+    multiple=True,
+    help="Temperature at this height too, m above ground (1.5, 2, 9 and 10 are there); may be repeated.",
+)
 @click.option("--write", "write_file", metavar="FILE", help="Save the commented scenario that was used, to edit.")
 @json_option
 @csv_option
@@ -44,6 +51,7 @@ daylayer forecast --profile morning.csv --latitude 39.2 --longitude -98.6 --elev
 @accept_doubt_option
 def command(
     case: str | None,
+    heights: tuple[float, ...],
     write_file: str | None,
     json_file: str | None,
     csv_file: str | None,
@@ -62,7 +70,7 @@ def command(
     scenario = scenario_of(case, flags)
     from slab.products.forecast import forecast
 
-    document = forecast(scenario)
+    document = forecast(scenario, heights=heights)
     with Outputs(inputs=inputs_of(scenario)) as outputs:
         if write_file is not None:
             from forcing.scenario_write import write_toml

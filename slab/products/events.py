@@ -191,6 +191,7 @@ def summary(run: Run) -> dict[str, Any]:
         "temperature_2m_min_C": None if coldest is None else _number(f["temperature_2m"][coldest] - ZERO_CELSIUS, 2),
         "temperature_2m_min_time": None if coldest is None else iso(time[coldest]),
         "relative_humidity_2m_min_pct": None if driest is None else _number(wet[driest], 1),
+        "relative_humidity_2m_min_time": None if driest is None else iso(time[driest]),
         "convective_temperature_C": _number(cloud.convective_temperature - ZERO_CELSIUS, 2),
         "cumulus_onset_time": _when(onset),
         "cumulus_base_m": _number(base, 1),

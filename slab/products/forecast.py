@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from collections.abc import Sequence
 from dataclasses import replace
 from datetime import UTC, datetime
 from typing import Any
@@ -17,9 +18,10 @@ from forcing.scenario_types import Assumption, Scenario
 from forcing.sun import sunrise_sunset
 from slab import __version__
 from slab.cautions import complete
-from slab.cycle import Known, Run, run
+from slab.cycle import HEIGHTS, Known, Run, run
 from slab.march import Control
 from slab.products.events import definitions_at, first_day, summary, wind_known
+from slab.products.night_events import night_answers, windows
 from slab.products.series import DECAYING, RICHARDSON, SLAB_TOP, STRESS, iso, output_knots, series
 from slab.products.sounding import wind
 from slab.rendered import profile_at
@@ -29,6 +31,7 @@ COARSE = Control(8.0, 1800.0, 3600.0)  # accuracy of the reruns behind the effec
 OLD_HOURS = 12.0
 ARCHIVE_DAYS = 14.0  # an older release is a case from the archive, not a stale input
 FAR_KM, FAR_M = 150.0, 300.0
+REBASE_DIFFERS = 0.15  # share of the depth from which both rules of re-basing are told
 STRATUS, STRATUS_LASTS = 0.4, 3600.0  # cumulus fraction that, held this long [s], counts as a stratus top (our choice)
 HELD_HOURS = 24.0
 
@@ -238,6 +241,7 @@ def document_of(done: Run, *, now: datetime | None = None, with_effects: bool = 
     scenario = done.scenario
     knots = output_knots(done)
     answers = summary(done)
+    answers |= windows(answers) | night_answers(done)
     afternoon = profile_at(done, _afternoon(done, answers))
     answers["other_definitions"] = definitions_at(afternoon) if answers["mixing_depth_max_m"] is not None else []
     found = effects(scenario, done) if with_effects else {}
@@ -268,10 +272,24 @@ def document_of(done: Run, *, now: datetime | None = None, with_effects: bool = 
             "settings": shown_settings(scenario),
         },
     }  # fmt: skip
+    document["warnings"] += both_depths(scenario, answers, found)
     document["cautions"] = complete(document)
     return document
 
 
-def forecast(scenario: Scenario, *, now: datetime | None = None, with_effects: bool = True) -> dict[str, Any]:
-    """Run a scenario and answer (see `document_of`)."""
-    return document_of(run(scenario), now=now, with_effects=with_effects)
+def both_depths(scenario: Scenario, answers: dict[str, Any], found: dict[str, tuple[float | None, float | None]]) -> list[str]:
+    """A warning with both depths where the two rules of re-basing differ by more than 15 %."""
+    change = found.get("profile.rebase", (None, None))[0]
+    depth = answers["mixing_depth_max_m"]
+    if change is None or not depth or abs(change) <= REBASE_DIFFERS * depth:
+        return []
+    other = "ground" if scenario.rebase == "sea-level" else "sea-level"
+    return [f"the depth hangs on how the profile is brought to the site: {depth:.0f} m by rule {scenario.rebase}, "
+            f"{depth + change:.0f} m by rule {other}"]  # fmt: skip
+
+
+def forecast(scenario: Scenario, *, now: datetime | None = None, with_effects: bool = True,
+             heights: Sequence[float] = ()) -> dict[str, Any]:  # fmt: skip
+    """Run a scenario and answer (see `document_of`); ``heights`` [m above ground] adds temperatures to the usual ones."""
+    kept = tuple(sorted({*HEIGHTS, *heights}))
+    return document_of(run(scenario, heights=kept), now=now, with_effects=with_effects)

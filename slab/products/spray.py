@@ -24,8 +24,9 @@ from slab.products.spray_field import RULE, SOURCES, LowField, low_field, what_t
 from slab.products.spray_limits import ORDER, SPRAY_KEYS, spray_limits
 from slab.products.spray_members import Member, members, steps_of
 from slab.products.spray_observed import Reading, Update, reading, tower_pair, update
-from slab.products.spray_window import TIMING, Night, Window, nights, outward, suns, timing_words
+from slab.products.spray_window import Night, Window, nights, outward, suns, timing_words
 from slab.spray_cautions import spray_cautions
+from slab.timing import TIMING
 
 Array = NDArray[np.float64]
 

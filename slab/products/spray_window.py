@@ -14,6 +14,7 @@ from numpy.typing import NDArray
 from forcing.scenario_types import Site
 from forcing.sun import SunTimes, sunrise_sunset
 from slab.products.spray_members import Member
+from slab.timing import TIMING, Timing
 
 Array = NDArray[np.float64]
 
@@ -21,24 +22,6 @@ ROW = 1800.0  # [s] the calendar's rows
 PERSISTENCE = 1800.0  # [s] a shorter inversion, or a shorter break in one, does not count (as the mesonets are scored)
 LOW, HIGH = 0.1, 0.9  # shares of the members outside the window on either side
 WIDTH_STEP = 1800.0  # [s] windows are rounded outward to this: no event is known to the minute
-
-
-@dataclass(frozen=True, slots=True)
-class Timing:
-    """What the model itself may be off [s]: how far the 10 and 90 % ends of onset and end are moved out, in quadrature with
-    the spread of the members."""
-
-    onset_early: float
-    onset_late: float
-    end_early: float
-    end_late: float
-
-
-TIMING = Timing(onset_early=5400.0, onset_late=5400.0, end_early=1800.0, end_late=5400.0)
-"""From 15 stations of one mesonet night (``python tests/bench/spray_mesonet.py``): with 90 min the 10-90 % window holds 12 of 15
-observed onsets, with 60 min 10, with none 5. The computed end lay half an hour early in the mean, up to two hours, and never late
-by more than 15 min, so that its late side, which is the dangerous one, gets 90 min (14 of 15; 60 min stands at an edge of half
-hours and holds 11) and its early side 30. The widths are chosen on the night they are counted on."""
 
 
 def timing_words(timing: Timing = TIMING) -> str:

@@ -6,7 +6,7 @@ for "present or possible" as the calendar says it, and for two baselines; the sa
 observed onsets and ends lie in the 10-90 % windows, also for other widths than the calendar's own.
 
 It is one night: the stations are not independent of each other, so that no number here has an error bar that means anything,
-and the calendar's own widths (`slab.products.spray_window.TIMING`) were chosen on it, so that its row is no test of them. A
+and the calendar's own widths (`slab.timing.TIMING`) were chosen on it, so that its row is no test of them. A
 miss, a half hour with an inversion that nothing warned of, is the dangerous side: the members and windows take away most
 misses, and pay for it with false alarms. Cloud was not measured; the runs take the sky as clear.
 """
@@ -47,7 +47,8 @@ from slab.products.spray_air import rows_of
 from slab.products.spray_calendar import states_of
 from slab.products.spray_limits import POSSIBLE, PRESENT
 from slab.products.spray_members import Member, members
-from slab.products.spray_window import TIMING, Night, Timing, nights, outward
+from slab.products.spray_window import Night, nights, outward
+from slab.timing import TIMING, Timing
 
 BETWEEN = (1.5, 9.0)
 MINUTE = 60.0
