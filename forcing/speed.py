@@ -9,7 +9,6 @@ not notice an edit in another file than the one of the cached function.
 
 from __future__ import annotations
 
-import hashlib
 import os
 import sys
 from collections.abc import Callable

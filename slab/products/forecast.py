@@ -284,8 +284,8 @@ def both_depths(scenario: Scenario, answers: dict[str, Any], found: dict[str, tu
     if change is None or not depth or abs(change) <= REBASE_DIFFERS * depth:
         return []
     other = "ground" if scenario.rebase == "sea-level" else "sea-level"
-    return [f"the depth hangs on how the profile is brought to the site: {depth:.0f} m by rule {scenario.rebase}, "
-            f"{depth + change:.0f} m by rule {other}"]  # fmt: skip
+    said = f"{depth:.0f} m by rule {scenario.rebase}, {depth + change:.0f} m by rule {other}"
+    return [f"the depth hangs on how the profile is brought to the site: {said}"]
 
 
 def forecast(scenario: Scenario, *, now: datetime | None = None, with_effects: bool = True,
