@@ -179,7 +179,7 @@ def _by_day(stage: _Stage, first: int, start: Handover, patience: int) -> tuple[
     later, weight = stage.later_on(air, first)
     for row, value in zip(stage.rows, weight, strict=True):
         row[LATER_WEIGHT] = float(value)
-    mass = sheared_mass(air) if first == 0 else mixed_mass(air)
+    mass = max(sheared_mass(air), mixed_mass(air)) if first == 0 else mixed_mass(air)
     state = as_numbers(np.zeros(MEMBERS))
     state[MASS], state[HEAT], state[VAPOUR] = mass, start.heat, start.vapour
     state[EAST], state[NORTH] = mean_below(air, mass, air.u), mean_below(air, mass, air.v)

@@ -21,7 +21,7 @@ pytestmark = pytest.mark.observed
 
 DAYS = ("BLLAST_20110620", "AMMA_20060710", "SCMS_19950805", "LBA_19990223", "CASES99_19991023", "CASS_composite")
 CLOUDY = "SCMS_19950805"
-"""Cumulus hold this layer at the condensation level while encroachment, which knows no cloud, grows on."""
+"""Fair-weather cumulus stand on this layer all day."""
 TABLE_ROUNDING = 10.0  # m, step of the tables
 
 
@@ -59,24 +59,25 @@ def test_calm_layer_is_at_most_1_3_times_the_encroachment_depth(name: str) -> No
     assert check.held, check.detail
 
 
-@pytest.mark.parametrize("name", [name for name in DAYS if name != CLOUDY])
+@pytest.mark.parametrize("name", DAYS)
 def test_layer_is_at_least_as_deep_as_encroachment(name: str) -> None:
     check = bench("observed_days").order_checks(day(name))[0]
     assert check.held, check.detail
 
 
 def test_layer_under_cumulus_stays_near_the_condensation_level() -> None:
-    """Where encroachment passes the layer on the cloudy day, the layer stands at the condensation level, not short of it."""
+    """From the first cumulus on, the layer stands at its condensation level within a tenth.
+
+    They form when the top of the entrainment zone reaches it, so the layer itself may then be short of it by an eighth.
+    """
     days, one = bench("observed_days"), day(CLOUDY)
-    depth, least = one.given.fields["depth"], one.encroachment.fields["depth"]
-    passed = [
-        k
-        for k in range(len(depth))
-        if one.given.day[k] and one.encroachment.day[k] and one.given.fields["buoyancy_flux"][k] > 0.0
-        if least[k] > depth[k] + days.SLACK
-    ]
-    assert passed
-    assert all(0.9 < depth[k] / days.condensation(one.given, k) < 1.1 for k in passed)
+    fields = one.given.fields
+    cloudy = [k for k in range(len(one.given.day)) if one.given.day[k] and fields["cumulus_fraction"][k] > days.CUMULUS_SEEN]
+    assert len(cloudy) > 12
+    ratios = [fields["depth"][k] / days.condensation(one.given, k) for k in cloudy]
+    assert min(ratios) > (1.0 - days.CONDENSATION_SLACK) / days.ZONE_TOP
+    assert max(ratios) < 1.1
+    assert max(ratios) > 0.9
 
 
 @pytest.mark.parametrize("name", DAYS)
