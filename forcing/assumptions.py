@@ -101,8 +101,8 @@ _MOTION = (
         "advection of moisture",
         "none (0 g/kg per h)",
         "no advection was given",
-        "0.2 g/kg per h of moistening",
-        0.2,
+        "0.1 g/kg per h of moistening",
+        0.1,
     ),
 )
 #: A later profile holds what sinking and advection did until then, so there is no step to take beside it.

@@ -13,6 +13,7 @@ __all__ = ["change_words", "known_words", "most_telling", "real_warnings", "tell
 Document = Mapping[str, Any]
 
 SMALL_M, SMALL_K = 10.0, 0.1  # changes of depth and temperature under which an input is only named
+BEYOND = "no figure, with it the layer would leave what this model treats"
 STANDING = ("the air aloft is held", "long-wave from")  # remarks that stand among the assumptions, so not warnings
 NOT_GIVEN = re.compile(r"^(derived: )?no [\w -]+? (was|were) given([;:,] (so )?|$)")
 KEY_AND_VALUE = re.compile(r"^[a-z]\w*? = ")
@@ -52,9 +53,14 @@ def telling_lines(document: Document, units: Units, *, letters: int = 0) -> list
 
 
 def untold_lines(document: Document, units: Units, *, letters: int = 0) -> list[str]:
-    """One text for each assumed input for which no step was computed."""
+    """One text for each assumed input for which no change is known; where others have one, a step's missing one is explained."""
     items = [item for item in document.get("assumptions") or [] if item.get("source") == "assumed"]
-    return [_one(item, units, letters, "") for item in items if item.get("effect_on_depth_m") is None]
+    missing = f": {BEYOND}" if most_telling(document) else ""
+    return [
+        _one(item, units, letters, units.restyle(str(item["step"])) + missing if item.get("step") and missing else "")
+        for item in items
+        if item.get("effect_on_depth_m") is None
+    ]
 
 
 def known_words(document: Document, source: str, units: Units) -> str:

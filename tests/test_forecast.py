@@ -18,8 +18,11 @@ from forcing.scenario import load, with_run, with_setting
 from forcing.scenario_types import Scenario
 from slab.commands.options import DOUBTS
 from slab.cycle import run
+from slab.inputs_words import BEYOND, untold_lines
+from slab.march import Control
 from slab.products.events import ventilation_class
-from slab.products.forecast import document_of, forecast
+from slab.products.forecast import document_of, effects, forecast
+from slab.wording import METRIC
 
 NOW = datetime(2026, 7, 14, 13, tzinfo=UTC)
 TEXT, LIST = str, list
@@ -240,6 +243,30 @@ def test_effects_of_assumptions_have_the_sign_of_their_step() -> None:
     assert all(a["step"] for a in by_key.values())
     given = [a for a in document["assumptions"] if a["source"] == "given"]
     assert all(a["effect_on_depth_m"] is None for a in given)
+
+
+@pytest.mark.parametrize("name", ["summer_plain", "dry_desert", "spring_crop", "snow_field"])
+def test_effects_hold_at_four_times_the_accuracy(name: str, monkeypatch: pytest.MonkeyPatch) -> None:
+    scenario = case(name, hours=12.0)
+    done = run(scenario)
+    quick = effects(scenario, done)
+    monkeypatch.setattr("slab.products.forecast.COARSE", Control(2.0, 900.0, 1200.0))
+    careful = effects(scenario, done)
+    for key, (depth, warmth) in careful.items():
+        if depth is None or warmth is None:
+            assert quick[key] == (None, None)
+        else:
+            assert quick[key] == (pytest.approx(depth, abs=10.0), pytest.approx(warmth, abs=0.05)), key
+
+
+def test_a_step_that_fogs_the_day_has_no_figure() -> None:
+    document = forecast(case("snow_field", hours=12.0), now=NOW)
+    moist = next(a for a in document["assumptions"] if a["key"] == "weather.moisture_advection_g_kg_h")
+    assert moist["effect_on_depth_m"] is None
+    assert moist["effect_on_max_temperature_K"] is None
+    told = [line for line in untold_lines(document, METRIC) if "moistening" in line]
+    assert len(told) == 1
+    assert told[0].endswith(BEYOND)
 
 
 def test_the_ventilation_class_is_the_users_own() -> None:

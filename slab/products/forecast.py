@@ -147,6 +147,7 @@ def effects(scenario: Scenario, done: Run) -> dict[str, tuple[float | None, floa
 
     One rerun of the first day for each, by the slab alone and with coarser steps than the forecast; the base it is
     compared with is rerun in the same way. The ground starts as in the forecast unless the step is in the surface.
+    None where the step leaves what the model treats: the top of the profile, or saturated air where the forecast has none.
     """
     day = first_day(done)
     if day is None:
@@ -154,16 +155,19 @@ def effects(scenario: Scenario, done: Run) -> dict[str, tuple[float | None, floa
     hours = max(1.0, (done.time[day.last] - done.time[0]) / 3600.0)
     known = Known(done.anchor, done.free, done.soil_start)
 
-    def extremes(changed: Scenario, key: str) -> tuple[float, float]:
+    def rerun(changed: Scenario, key: str) -> Run:
         short = replace(changed, run=replace(changed.run, hours=hours))
         kept = known._replace(soil=None) if key.startswith("surface.") else known
-        return _extremes(run(short, control=COARSE, heights=(), known=kept, by_day=True))
+        return run(short, control=COARSE, heights=(), known=kept, by_day=True)
 
-    base = extremes(scenario, "")
+    base_run = rerun(scenario, "")
+    base, fogged = _extremes(base_run), _saturated(base_run)
     found = {}
     for one in scenario.assumptions:
         if one.stepped is not None:
-            depth, warmth = extremes(with_step(scenario, one), one.key)
+            stepped = rerun(with_step(scenario, one), one.key)
+            beyond = _saturated(stepped) and not fogged
+            depth, warmth = (math.nan, math.nan) if beyond else _extremes(stepped)
             found[one.key] = (_change(depth, base[0], 0), _change(warmth, base[1], 2))
     return found
 
