@@ -72,3 +72,16 @@ def bundled(name: str = DEFAULT) -> Path:
     if not path.is_file():
         raise ScenarioError(f"no bundled scenario '{name}'", remedy=suggestion(name, bundled_names()))
     return path
+
+
+def case_file(case: str | None) -> Path:
+    """Scenario file that a command's CASE names: a path, ``bundled:NAME``, or None for the default.
+
+    Raises
+    ------
+    ScenarioError
+        If no scenario of that name is bundled.
+    """
+    if case is None:
+        return bundled()
+    return bundled(case.removeprefix(PREFIX).strip()) if case.startswith(PREFIX) else Path(case)

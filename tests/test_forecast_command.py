@@ -118,6 +118,19 @@ def test_a_bare_command_runs_a_bundled_scenario() -> None:
     assert "invented" in result.stdout
 
 
+def test_a_bundled_scenario_runs_by_its_name() -> None:
+    result = run("bundled:dry_desert", "--hours", "2", "--accept-doubt")
+    assert result.exit_code == 0, result.stderr
+    assert "invented" in result.stdout
+
+
+def test_an_unknown_bundled_scenario_is_named_with_those_there_are() -> None:
+    result = run("bundled:dry_dessert")
+    assert result.exit_code == 1
+    assert "dry_dessert" in result.stderr
+    assert "dry_desert" in result.stderr
+
+
 def test_help_starts_with_an_example() -> None:
     result = run("-h")
     assert result.exit_code == 0

@@ -75,7 +75,7 @@ def scenario_of(case: str | None, flags: CaseFlags) -> Scenario:
     DaylayerError
         If a file is wrong.
     """
-    from forcing.bundled import DEFAULT, bundled
+    from forcing.bundled import case_file
     from forcing.scenario import from_flags, load, with_run
 
     first_use = {name: value for name, value in flags.items() if value is not None and name != "hours"}
@@ -97,7 +97,7 @@ def scenario_of(case: str | None, flags: CaseFlags) -> Scenario:
     if first_use:
         named = ", ".join("--" + name.replace("_", "-").removesuffix("-file") for name in first_use)
         raise click.UsageError(f"{named} needs --profile FILE; with a scenario file, change the value there.")
-    scenario = load(case if case is not None else bundled(DEFAULT))
+    scenario = load(case_file(case))
     return scenario if hours is None else with_run(scenario, hours=float(hours))
 
 

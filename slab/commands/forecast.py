@@ -64,8 +64,9 @@ def command(
 ) -> None:
     """Forecast the day (and night) after one balloon profile.
 
-    CASE is a scenario file in TOML; left out, a bundled invented scenario runs. With --profile no scenario is
-    needed: what the file does not say is taken from the flags, and everything assumed is listed above the result.
+    CASE is a scenario file in TOML, or bundled:NAME; left out, an invented one, bundled:summer_plain, runs. With
+    --profile no scenario is needed: what the file does not say is taken from the flags, and everything assumed is
+    listed above the result.
     """
     scenario = scenario_of(case, flags)
     from slab.products.forecast import forecast

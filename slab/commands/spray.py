@@ -75,9 +75,9 @@ def command(
 ) -> None:
     """Plan spraying around the surface inversion, hour by hour.
 
-    CASE is a scenario file in TOML; left out, a bundled invented scenario runs. Limits are your own, from its [limits]
-    section; without them only conditions are shown. With --profile no scenario is needed. Every hour to come is a plan
-    only: measure on the field.
+    CASE is a scenario file in TOML, or bundled:NAME; left out, an invented one, bundled:summer_plain, runs. Limits are
+    your own, from its [limits] section; without them only conditions are shown. With --profile no scenario is needed.
+    Every hour to come is a plan only: measure on the field.
     """
     scenario = scenario_of(case, flags)
     from slab.products.spray import spray
