@@ -38,15 +38,18 @@ TOP_MARGIN = 0.995  # the slab has reached the top of the profile when it holds 
 
 class Control(NamedTuple):
     """Accuracy of the march: local depth tolerance [m], longest step [s], spacing of the
-    knots [s], shortest step [s].
+    knots [s], shortest step [s], and whether (1.0) a step starts from the rates at the last one's predicted end.
 
-    Forcing is linear between knots, and long-wave and shade are refreshed at each.
+    Forcing is linear between knots, and long-wave and shade are refreshed at each. Reuse of the predicted end's rates
+    halves the work: predicted and corrected state differ by the square of the step, so the order stays two, but it
+    is less stable (a predictor-corrector without the last evaluation; common practice).
     """
 
     depth_tolerance: float
     longest_step: float
     knot: float = 600.0
     least_step: float = 0.5
+    reuse: float = 0.0
 
 
 STANDARD = Control(0.25, 300.0)
@@ -133,7 +136,10 @@ def advance(y: list[float], step: float, span: float, row: Numbers, following: N
         for i in range(MEMBERS):
             y[i] = work.ahead[i]
         tau = span if last else tau + trial
-        rate_known = False
+        rate_known = control.reuse > 0.0
+        if rate_known:
+            for i in range(MEMBERS):
+                work.rate[i] = work.rate_ahead[i]
         grown = trial * min(3.0, 0.9 / math.sqrt(max(error, 0.01)))
         step = max(step, grown) if last else grown
         if y[MASS] >= top:

@@ -27,7 +27,7 @@ from slab.products.sounding import wind
 from slab.rendered import profile_at
 
 SCHEMA = "daylayer/1"
-COARSE = Control(8.0, 1800.0, 3600.0)  # accuracy of the reruns behind the effects of assumptions; both sides use it
+COARSE = Control(8.0, 1800.0, 3600.0, reuse=1.0)  # accuracy of the reruns behind the effects of assumptions; both sides use it
 OLD_HOURS = 12.0
 ARCHIVE_DAYS = 14.0  # an older release is a case from the archive, not a stale input
 FAR_KM, FAR_M = 150.0, 300.0
