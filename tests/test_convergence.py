@@ -132,17 +132,18 @@ def test_the_days_are_as_varied_as_asked() -> None:
     assert {c.scenario.run.entrainment for c in imposed} == set(CLOSURES)
 
 
+@pytest.mark.parametrize("reuse", [0.0, 1.0])
 @pytest.mark.parametrize("closure", [Closure(0.2, 0.0, 0.0, 0.0, 0.0), Closure(0.2, 2.5, 8.0, 0.0, 0.0)])
-def test_the_pair_is_of_second_order(closure: Closure) -> None:
+def test_the_pair_is_of_second_order(closure: Closure, reuse: float) -> None:
     """Halving the step of a smooth case divides the error by four."""
 
     def depth(step: float) -> float:
-        blind = Control(depth_tolerance=1e9, longest_step=step)
+        blind = Control(depth_tolerance=1e9, longest_step=step, reuse=reuse)
         done = grow(depth=400.0, jump=1.0, gradient=0.005, heat_flux=lambda t: 0.1, hours=4.0, closure=closure,
                     friction_velocity=0.3, control=blind)  # fmt: skip
         return float(done.depth[-1])
 
     exact = depth(1.0)
-    errors = [abs(depth(step) - exact) for step in (120.0, 60.0, 30.0)]
+    errors = [abs(depth(step) - exact) for step in (60.0, 30.0, 15.0)]  # a knot every 120 s: nothing is reused over it
     for coarse, fine in pairwise(errors):
         assert math.log2(coarse / fine) == pytest.approx(2.0, abs=0.35)
