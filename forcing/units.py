@@ -7,7 +7,6 @@ mile 1609.344 m: NIST SP 811 appendix B) unless a source stands beside them.
 from __future__ import annotations
 
 import math
-import re
 from collections.abc import Mapping
 from dataclasses import dataclass
 from types import MappingProxyType
@@ -40,7 +39,7 @@ class Unit:
         return (value - self.offset) / self.factor
 
 
-#: The suffix of a column or key name, and its unit. Longest suffix wins.
+#: The suffix of a column or key name, and its unit.
 SUFFIXES: Mapping[str, Unit] = MappingProxyType(
     {
         "hPa": Unit(100.0, "Pa"),
@@ -69,74 +68,6 @@ SUFFIXES: Mapping[str, Unit] = MappingProxyType(
         "h": Unit(3600.0, "s"),
     }
 )
-
-#: How a unit is written in text, next to the suffix forms with spaces or slashes.
-_SPELLED: Mapping[str, str] = MappingProxyType(
-    {
-        "m/s": "m_s",
-        "knots": "kt",
-        "knot": "kt",
-        "kts": "kt",
-        "kn": "kt",
-        "km/h": "km_h",
-        "feet": "ft",
-        "foot": "ft",
-        "metres": "m",
-        "°c": "C",
-        "degc": "C",
-        "c": "C",
-        "°f": "F",
-        "degf": "F",
-        "f": "F",
-        "k": "K",
-        "%": "pct",
-        "g/kg": "g_kg",
-        "hpa": "hPa",
-        "mb": "hPa",
-        "pa": "Pa",
-        "m2/s": "m2_s",
-        "kt ft": "kt_ft",
-        "°": "deg",
-    }
-)
-
-_QUANTITY = re.compile(r"\s*([-+]?(?:\d+\.?\d*|\.\d+)(?:[eE][-+]?\d+)?)\s*(.*?)\s*")
-
-
-def split_suffix(name: str) -> tuple[str, Unit] | None:
-    """Quantity and unit of a name such as ``wind_speed_kt``; None if it ends in no known unit."""
-    parts = name.split("_")
-    for start in range(1, len(parts)):
-        unit = SUFFIXES.get("_".join(parts[start:]))
-        if unit is not None:
-            return "_".join(parts[:start]), unit
-    return None
-
-
-def parse_quantity(text: str, si_unit: str, *, place: str = "") -> float:
-    """SI value of text such as ``12 kt``, ``3000 ft`` or ``65 F``; a bare number is SI already.
-
-    Parameters
-    ----------
-    si_unit : str
-        Unit of the answer as in `SUFFIXES`, for example ``m s-1``.
-
-    Raises
-    ------
-    DaylayerError
-        If the text is no number with a unit of that kind.
-    """
-    found = _QUANTITY.fullmatch(text)
-    if found is None:
-        raise DaylayerError(f"'{text}' is not a number with a unit", place=place, remedy=f"write a value in {si_unit}")
-    value, written = float(found[1]), found[2]
-    if not written:
-        return value
-    unit = SUFFIXES.get(_SPELLED.get(written.lower(), written))
-    if unit is None or unit.si_unit != si_unit:
-        fitting = ", ".join(name for name, one in SUFFIXES.items() if one.si_unit == si_unit)
-        raise DaylayerError(f"unit '{written}' in '{text}' is not usable", place=place, remedy=f"use one of {fitting}")
-    return unit.to_si(value)
 
 
 def log_wind_factor(height: float, reference_height: float, roughness: float) -> float:

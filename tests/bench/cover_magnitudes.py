@@ -78,14 +78,15 @@ def table(rows: list[Row], days: str, hours: float) -> list[str]:
     ]
     apart = ["", "the same rows, temperatures kept apart (K, medians)",
              f"{'row':<52}{'2 m max':>9}{'layer':>9}{'skin max':>9}{'2 m min':>9}{'skin min':>9}"]  # fmt: skip
-    right = inside = 0
+    asked = right = inside = 0
     done: dict[tuple[str, float, str], list[Pair]] = {}
     for row in rows:
         key = (row["base"], row["soil_moisture"], row["change"])
         pairs = done[key] if key in done else done.setdefault(key, pairs_of(row, days, hours))
         gaps = differences(row, pairs, row["answer"])
         sign, size = verdict(row, gaps)
-        right += sign != "WRONG"
+        asked += sign != "none asked"
+        right += sign == "right"
         inside += size == "inside"
         form = "{:+.0f}" if row["answer"].endswith("_m") else "{:+.2f}"
         published = f"{form.format(row['low'])} to {form.format(row['high'])}"
@@ -95,7 +96,7 @@ def table(rows: list[Row], days: str, hours: float) -> list[str]:
         lines.append(f"{row['name']:<52}{len(gaps):>3}{published:>18}{numbers}  {sign:<11}{size:<8}{agree}")
         cells = "".join(f"{median(differences(row | {'relative': False}, pairs, name)):>+9.2f}" for name in KEPT_APART)
         apart.append(f"{row['name']:<52}{cells}")
-    lines.append(f"{right} of {len(rows)} signs right, {inside} of {len(rows)} sizes inside")
+    lines.append(f"{right} of {asked} signs right, {inside} of {len(rows)} sizes inside")
     return lines + apart
 
 
